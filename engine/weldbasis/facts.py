@@ -1,0 +1,41 @@
+"""The facts of a project, ready for evaluation: columns of given values and where each came from."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Literal
+
+from weldbasis.values import Column, Ints
+
+OriginKind = Literal[
+    "certificate", "drawing", "procedure", "grade-limit", "era-envelope", "samples",
+    "consumable", "project", "default", "assumption", "unknown",
+]
+
+
+@dataclass(frozen=True)
+class Origin:
+    """Where a given value comes from: what kind of paper, its words, and the line of the project file."""
+
+    kind: OriginKind
+    text: str
+    place: str = ""
+
+
+@dataclass(frozen=True)
+class Facts:
+    """Given values of all joints together.
+
+    `given` maps a quantity id to a column over joints or members, by the quantity's scope. A row that is
+    ABSENT there was not given, and a rule that gives the quantity then fills it. `joint_of` holds, for every
+    member row, the row of its joint, in rising order; the weld metal is the last member of every joint.
+    `origins` holds, for every row of a given column, a place in `origin_list`.
+    """
+
+    joints: tuple[str, ...]
+    members: tuple[str, ...]
+    joint_of: Ints
+    given: Mapping[str, Column]
+    origins: Mapping[str, Ints] = field(default_factory=dict)
+    origin_list: tuple[Origin, ...] = ()

@@ -1,0 +1,257 @@
+"""What a knowledge base holds once read: frozen records, no files and no behaviour.
+
+Rules keep their body as plain data; the module of their kind gives it meaning.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import Any, Literal
+
+from weldbasis.problem import Place
+from weldbasis.ranges import Range
+
+Scope = Literal["joint", "member"]
+Checked = Literal["seen", "quoted", "from-memory", "derived", "common-practice"]
+
+
+@dataclass(frozen=True)
+class Level:
+    """One level of a category, with the words a page shows for it."""
+
+    id: str
+    title: str
+
+
+@dataclass(frozen=True)
+class Quantity:
+    """One fact a rule may read or give.
+
+    Exactly one of `number range` and `levels` is used: `levels` is empty for a number.
+    `worse` is "higher", "lower", "last", "first" (place in the order of levels) or "neither".
+    """
+
+    id: str
+    title: str
+    of: Scope
+    says: str
+    symbol: str = ""
+    unit: str = ""
+    range: Range = Range(0.0, 0.0)
+    decimals: int = 3
+    levels: tuple[Level, ...] = ()
+    worse: str = "neither"
+    given: Literal["must", "may", "never"] = "never"
+    # What stands where a project gives nothing: "unknown", "absent", or a value with its reason.
+    if_not_given: Any = "absent"
+    if_not_given_because: str = ""
+    # Place among the decisions, 0 for a quantity that is none; parts belong to a decision.
+    decision: int = 0
+    part_of: str = ""
+    topic: str = ""
+    place: Place = Place("")
+
+    @property
+    def is_number(self) -> bool:
+        """Whether its values are numbers rather than levels."""
+        return not self.levels
+
+    @cached_property
+    def order(self) -> tuple[str, ...]:
+        """The ids of its levels in their order."""
+        return tuple(level.id for level in self.levels)
+
+
+@dataclass(frozen=True)
+class Cite:
+    """Where a rule's figures come from and how they were checked; `covers` names the figures meant."""
+
+    source: str
+    at: str
+    checked: Checked
+    covers: str = ""
+
+
+@dataclass(frozen=True)
+class Change:
+    """One entry of a rule's history."""
+
+    version: int
+    date: str
+    what: str
+    why: str
+    approved_by: str
+
+
+@dataclass(frozen=True)
+class Read:
+    """A name used in a rule's body: the quantity it stands for and the unit the body takes it in."""
+
+    name: str
+    quantity: str
+    unit: str = ""
+
+
+@dataclass(frozen=True)
+class Rule:
+    """One rule as written. Conditions map quantity ids to ranges or levels, as in the file."""
+
+    id: str
+    version: int
+    title: str
+    kind: str
+    for_each: Scope
+    gives: tuple[str, ...]
+    reads: tuple[Read, ...]
+    body: Mapping[str, Any]
+    say: str
+    cites: tuple[Cite, ...]
+    changes: tuple[Change, ...]
+    applies_when: Mapping[str, Any] = field(default_factory=dict)
+    valid_within: Mapping[str, Any] = field(default_factory=dict)
+    direction: Mapping[str, str] = field(default_factory=dict)
+    gives_unit: str = ""
+    note: str = ""
+    topic: str = ""
+    layer: str = ""
+    place: Place = Place("")
+    # Places of the parts of the file, by path such as ("rows", 3, "when"), for messages.
+    places: Mapping[tuple[str | int, ...], Place] = field(default_factory=dict, compare=False, repr=False)
+
+    def place_of(self, *path: str | int) -> Place:
+        """The place of the nearest recorded part of the rule's file."""
+        while path:
+            if path in self.places:
+                return self.places[path]
+            path = path[:-1]
+        return self.place
+
+
+@dataclass(frozen=True)
+class Source:
+    """What a rule cites."""
+
+    id: str
+    title: str
+    kind: str
+    edition: str = ""
+    year: int = 0
+    how_checked: str = ""
+    note: str = ""
+    place: Place = Place("")
+
+
+@dataclass(frozen=True)
+class GradeBand:
+    """Limits of a grade over a band of thickness, mm. Elements that are not named have no limit here."""
+
+    thickness: Range
+    composition: Mapping[str, Range]
+    ce_iiw_max: float | None = None
+    pcm_max: float | None = None
+    cet_max: float | None = None
+    yield_min: float | None = None
+    tensile: Range | None = None
+
+
+@dataclass(frozen=True)
+class Grade:
+    """A steel grade of a standard."""
+
+    id: str
+    designation: str
+    standard: str
+    family: str
+    delivery: tuple[str, ...]
+    group: str
+    bands: tuple[GradeBand, ...]
+    product: str = ""
+    number: str = ""
+    p_number: str = ""
+    aliases: tuple[str, ...] = ()
+    checked: Mapping[str, Checked] = field(default_factory=dict)
+    cites: tuple[Cite, ...] = ()
+    note: str = ""
+    place: Place = Place("")
+
+
+@dataclass(frozen=True)
+class Era:
+    """What an undocumented steel of a time and product may hold: typical ranges and cautious ceilings."""
+
+    id: str
+    title: str
+    years: str
+    region: str
+    family: str
+    typical: Mapping[str, Range]
+    ceilings: Mapping[str, float]
+    checked: Checked
+    cites: tuple[Cite, ...] = ()
+    note: str = ""
+    place: Place = Place("")
+
+
+@dataclass(frozen=True)
+class Consumable:
+    """A consumable classification of an open standard, without trade names."""
+
+    id: str
+    standard: str
+    process: str
+    covering: str
+    hydrogen_max: float | None
+    yield_min: float | None = None
+    tensile: Range | None = None
+    composition: Mapping[str, Range] = field(default_factory=dict)
+    checked: Checked = "from-memory"
+    cites: tuple[Cite, ...] = ()
+    note: str = ""
+    place: Place = Place("")
+
+
+@dataclass(frozen=True)
+class Case:
+    """A worked example that a rule must reproduce. `nature` says whether it proves anything outside."""
+
+    id: str
+    rule: str
+    given: Mapping[str, Any]
+    expect: Mapping[str, Any]
+    nature: Literal["published", "table", "hand-worked", "recalled"]
+    source: str
+    at: str
+    tolerance: float = 0.0
+    arithmetic: str = ""
+    note: str = ""
+    place: Place = Place("")
+
+
+@dataclass(frozen=True)
+class Knowledge:
+    """A whole knowledge base, each kind of record by its id."""
+
+    title: str
+    custodian: str
+    release: str
+    quantities: Mapping[str, Quantity]
+    rules: Mapping[str, Rule]
+    sources: Mapping[str, Source]
+    grades: Mapping[str, Grade]
+    eras: Mapping[str, Era]
+    consumables: Mapping[str, Consumable]
+    cases: tuple[Case, ...]
+    digest: str = ""
+
+    @cached_property
+    def decisions(self) -> tuple[Quantity, ...]:
+        """The decisions, in the order pages and tables show them."""
+        found = [q for q in self.quantities.values() if q.decision]
+        return tuple(sorted(found, key=lambda q: q.decision))
+
+    @cached_property
+    def rule_giving(self) -> Mapping[str, Rule]:
+        """The rule that gives a quantity, by the quantity's id."""
+        return {quantity: rule for rule in self.rules.values() for quantity in rule.gives}
