@@ -132,3 +132,39 @@ def joined_flags(columns: Sequence[Column], rows: int) -> Bytes:
     for column in columns:
         flags |= column.flags
     return flags
+
+
+def absent_numbers(rows: int) -> Numbers:
+    """A column of numbers none of which is there."""
+    nothing = np.full(rows, np.nan)
+    return Numbers(nothing, nothing, np.full(rows, ABSENT), np.zeros(rows, np.uint8))
+
+
+def absent_levels(rows: int) -> Levels:
+    """A column of levels none of which is there."""
+    return Levels(np.zeros(rows, np.uint64), np.full(rows, ABSENT), np.zeros(rows, np.uint8))
+
+
+def presence_of(there: Truth) -> Bytes:
+    """Presence from the truth of "there is a value"."""
+    return (np.where(there.may, PRESENT, 0) | np.where(there.surely, 0, ABSENT)).astype(np.uint8)
+
+
+def is_there(column: Column) -> Truth:
+    """Whether the column has a value, row by row."""
+    return Truth((column.presence & PRESENT) != 0, column.presence == PRESENT)
+
+
+def numbers_where(there: Truth, low: Floats, high: Floats, flags: Bytes) -> Numbers:
+    """Ranges kept where there may be a value, nan and absent elsewhere."""
+    if bool(there.may.all()):
+        return Numbers(low, high, presence_of(there), flags)
+    kept = np.where(there.may, low, np.nan)
+    tops = kept if high is low else np.where(there.may, high, np.nan)
+    return Numbers(kept, tops, presence_of(there), np.where(there.may, flags, 0).astype(np.uint8))
+
+
+def levels_where(there: Truth, mask: Bits, flags: Bytes) -> Levels:
+    """Level sets kept where there may be a value, empty and absent elsewhere."""
+    kept = np.where(there.may, mask, np.uint64(0))
+    return Levels(kept, presence_of(there), np.where(there.may, flags, 0).astype(np.uint8))

@@ -1,0 +1,94 @@
+"""`weldbasis decide`: evaluate a project, write its record, print the joint table."""
+
+from __future__ import annotations
+
+import json
+from collections import Counter
+from pathlib import Path
+
+import click
+from rich.table import Table
+
+from weldbasis.cli.console import CAUTION, json_option, kb_option, knowledge_from, progress, project_from, terminal
+from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.project import Project
+from weldbasis.reasons import trace_joint
+from weldbasis.record import canonical_bytes, record_from_traces, write_aside
+from weldbasis.settle import settle
+from weldbasis.trace import JointTrace
+from weldbasis.views import decision_text, finding_count_text
+
+
+@click.command("decide")
+@click.argument("project", type=click.Path(path_type=Path, exists=True))
+@click.option("--record", type=click.Path(path_type=Path, dir_okay=False), default=None,
+              help="Where to write the record. Without it: record.json in the project's folder.")
+@click.option("--no-record", is_flag=True, help="Print the decisions only; write nothing.")
+@kb_option
+@json_option
+def command(project: Path, record: Path | None, no_record: bool, kb: Path | None, as_json: bool) -> None:
+    """Decide every joint of PROJECT (a folder with project.yaml).
+
+    Prints, for every joint, the main decisions with their state, and what stops or holds the work. The
+    record holds everything in canonical JSON: the same inputs and rules always give the same bytes.
+
+    Exit code 1 when a finding stops work on a joint.
+    """
+    knowledge = knowledge_from(kb)
+    chosen = project_from(project, knowledge)
+    evaluation = evaluate(knowledge, chosen.facts)
+    traces = decide_all(evaluation)
+    data = record_from_traces(chosen, evaluation, iter(traces))
+    target = record or chosen.folder / "record.json"
+    if not no_record:
+        write_aside(target, canonical_bytes(data))
+    if as_json:
+        click.echo(json.dumps(data, ensure_ascii=False, indent=1))
+    else:
+        _show(chosen, evaluation, traces)
+        if not no_record:
+            click.echo(f"Record: {target}")
+        click.echo(CAUTION)
+    if any(finding.level == "stop" for trace in traces for finding in trace.findings):
+        raise click.exceptions.Exit(1)
+
+
+def decide_all(evaluation: Evaluation) -> list[JointTrace]:
+    """The traces of all joints, with a progress bar where that takes a while."""
+    count = len(evaluation.facts.joints)
+    narrowings = settle(evaluation, range(count))
+    found = []
+    with progress("reading reasons", count) as bar:
+        for row in range(count):
+            found.append(trace_joint(evaluation, row, narrowings))
+            bar.advance(bar.task_ids[0])
+    return found
+
+
+def _show(project: Project, evaluation: Evaluation, traces: list[JointTrace]) -> None:
+    console = terminal()
+    quantities = evaluation.knowledge.quantities
+    shown = [q for q in evaluation.knowledge.decisions if q.id in ("min_preheat", "max_interpass", "hydrogen_class", "pwht")]
+    table = Table(title=project.title, title_justify="left", pad_edge=False, box=None, padding=(0, 1))
+    table.add_column("joint", no_wrap=True)
+    for quantity in shown:
+        table.add_column(_heading(quantity.id, quantity.title))
+    table.add_column("findings")
+    for trace in traces:
+        by_name = {decision.ref.quantity: decision for decision in trace.decisions}
+        cells = [decision_text(quantities[q.id], by_name[q.id]) for q in shown]
+        table.add_row(trace.joint, *cells, finding_count_text(trace.findings))
+    console.print(table)
+    states = Counter(d.state for trace in traces for d in trace.decisions if not quantities[d.ref.quantity].part_of)
+    click.echo(f"{len(traces)} joints: " + ", ".join(f"{states[s]} decisions {s}" for s in ("settled", "open", "uncovered")))
+    for trace in traces:
+        for finding in trace.findings:
+            if finding.level == "stop":
+                click.echo(f"STOP {trace.joint}: {finding.text}")
+    if project.rules == "working":
+        click.echo("Rules: working, not released.")
+
+
+def _heading(name: str, title: str) -> str:
+    return {"min_preheat": "preheat", "max_interpass": "interpass max", "hydrogen_class": "hydrogen"}.get(
+        name, title.lower() if len(title) < 14 else name)

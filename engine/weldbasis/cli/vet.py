@@ -1,0 +1,61 @@
+"""`weldbasis vet`: is the rule set sound?"""
+
+from __future__ import annotations
+
+import dataclasses
+import json
+from pathlib import Path
+
+import click
+
+from weldbasis.cases import nature_counts
+from weldbasis.cli.console import json_option
+from weldbasis.load.knowledge import load_knowledge
+from weldbasis.places import kb_folder
+from weldbasis.problem import Refused
+from weldbasis.vet import VetFinding, VetReport, from_problem, vet
+from weldbasis.words import places
+
+
+@click.command("vet")
+@click.argument("kb", type=click.Path(path_type=Path, exists=True, file_okay=False), required=False)
+@click.option("--quiet", is_flag=True, help="Only what stops work, and the summary.")
+@json_option
+def command(kb: Path | None, quiet: bool, as_json: bool) -> None:
+    """Look over the rule set in the folder KB (without it: the published practice).
+
+    Checks the files against their schemas, that names and units fit the vocabulary, that the rules close no
+    circle, that tables leave no gap, that stated directions hold, and that every case comes out as its
+    source says. Each finding names file, line and column, and what to do.
+
+    Exit code 1 when something must be mended before the rules are used.
+    """
+    try:
+        report = vet(load_knowledge(kb or kb_folder()))
+    except Refused as refused:
+        report = VetReport(tuple(from_problem(problem) for problem in refused.problems), (), {})
+    if as_json:
+        click.echo(json.dumps(_data(report), ensure_ascii=False, indent=1))
+    else:
+        _show(report, quiet)
+    if report.stops:
+        raise click.exceptions.Exit(1)
+
+
+def _show(report: VetReport, quiet: bool) -> None:
+    for finding in report.stops if quiet else report.findings:
+        click.echo(str(finding))
+    if report.counts:
+        click.echo(", ".join(f"{count} {name}" for name, count in report.counts.items()))
+        natures = nature_counts(tuple(result.case for result in report.cases))
+        click.echo("cases by nature: " + ", ".join(f"{count} {name}" for name, count in natures.items()))
+    cautions = len(report.findings) - len(report.stops)
+    click.echo(f"{places(len(report.stops), 'finding')} that {'stops' if len(report.stops) == 1 else 'stop'} work, "
+               f"{places(cautions, 'caution')}")
+
+
+def _data(report: VetReport) -> dict[str, object]:
+    def entry(finding: VetFinding) -> dict[str, object]:
+        return {**dataclasses.asdict(finding), "place": str(finding.place)}
+
+    return {"format": "weldbasis-vet/1", "counts": report.counts, "findings": [entry(f) for f in report.findings]}

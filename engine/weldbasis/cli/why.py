@@ -1,0 +1,110 @@
+"""`weldbasis why`: the reasons of one joint, in the terminal."""
+
+from __future__ import annotations
+
+import dataclasses
+import json
+from pathlib import Path
+
+import click
+
+from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, knowledge_from, project_from, terminal
+from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.problem import nearest
+from weldbasis.reasons import trace_joint, value_text
+from weldbasis.trace import Decision, JointTrace, Ref, Step
+from weldbasis.views import decision_text
+
+
+@click.command("why")
+@click.argument("project", type=click.Path(path_type=Path, exists=True))
+@click.argument("joint")
+@click.option("--decision", "wanted", default=None, metavar="ID",
+              help="Only this decision, for example min_preheat. Any other quantity of the vocabulary works too.")
+@click.option("--all", "everything", is_flag=True, help="Every step, also those that gave nothing.")
+@kb_option
+@json_option
+def command(project: Path, joint: str, wanted: str | None, everything: bool, kb: Path | None, as_json: bool) -> None:
+    """Say why: the decisions of JOINT in PROJECT, each as a chain of sentences down to the inputs.
+
+    Every line names the rule it comes from in brackets; `weldbasis publish` makes the same trace a page
+    with a link to the rule and its source at every step.
+    """
+    knowledge = knowledge_from(kb)
+    chosen = project_from(project, knowledge)
+    row = joint_row(chosen, joint)
+    evaluation = evaluate(knowledge, chosen.facts)
+    trace = trace_joint(evaluation, row)
+    if wanted and wanted not in knowledge.quantities:
+        raise click.BadParameter(f"no quantity {wanted!r}. {nearest(wanted, knowledge.quantities)}",
+                                 param_hint="--decision")
+    if as_json:
+        click.echo(json.dumps(trace_data(trace), ensure_ascii=False, indent=1))
+        return
+    console = terminal()
+    console.print(f"[bold]{trace.joint}[/bold]  {', '.join(trace.members)}")
+    for decision in trace.decisions:
+        if wanted in (None, decision.ref.quantity) and (everything or wanted or decision.state != "uncovered"):
+            _show_decision(evaluation, trace, decision, everything or wanted is not None)
+    if wanted and wanted not in {decision.ref.quantity for decision in trace.decisions}:
+        for ref, step in trace.steps.items():
+            if ref.quantity == wanted:
+                _show_step(evaluation, step, 0)
+    for finding in trace.findings:
+        console.print(f"[bold]{finding.level}[/bold] {finding.text} [dim]\\[{finding.rule}][/dim]", soft_wrap=False)
+    click.echo(CAUTION)
+
+
+def trace_data(trace: JointTrace) -> dict[str, object]:
+    """The trace as plain data for a script; the format is versioned."""
+    steps = [dataclasses.asdict(step) for step in trace.steps.values()]
+    return {
+        "format": "weldbasis-trace/1",
+        "joint": trace.joint,
+        "members": list(trace.members),
+        "decisions": [dataclasses.asdict(decision) for decision in trace.decisions],
+        "findings": [dataclasses.asdict(finding) for finding in trace.findings],
+        "steps": steps,
+    }
+
+
+def _show_decision(evaluation: Evaluation, trace: JointTrace, decision: Decision, full: bool) -> None:
+    quantity = evaluation.knowledge.quantities[decision.ref.quantity]
+    if quantity.part_of and decision.state == "uncovered":
+        return
+    console = terminal()
+    console.print(f"\n[bold]{quantity.title}: {decision_text(quantity, decision)}[/bold]")
+    depths = _depths(trace, decision)
+    for ref in decision.chain:
+        step = trace.steps[ref]
+        if full or step.state != "given" or depths[ref] <= 2:
+            _show_step(evaluation, step, depths[ref])
+
+
+def _depths(trace: JointTrace, decision: Decision) -> dict[Ref, int]:
+    depths = {decision.ref: 0}
+    for ref in decision.chain:
+        for below in [c.ref for c in trace.steps[ref].candidates if c.governs] or trace.steps[ref].reads:
+            depths.setdefault(below, depths.get(ref, 0) + 1)
+    return depths
+
+
+def _show_step(evaluation: Evaluation, step: Step, depth: int) -> None:
+    console = terminal()
+    indent = "  " * min(depth, 8)
+    marks = [word for word, on in (("rests on an assumption", step.value.assumed), ("unknown", step.value.unknown),
+                                   ("safe, may be wide", step.value.wide)) if on and step.state == "gave"]
+    rule = f" [dim]\\[{step.rule}][/dim]" if step.rule else ""
+    tail = f" [dim]({', '.join(marks)})[/dim]" if marks else ""
+    console.print(f"{indent}{_plain(step.sentence)}{rule}{tail}")
+    if step.figures:
+        console.print(f"{indent}  [dim]{_plain(step.figures)}[/dim]")
+    for candidate in step.candidates:
+        if not candidate.governs:
+            quantity = evaluation.knowledge.quantities[candidate.ref.quantity]
+            value = value_text(quantity, candidate.value)
+            console.print(f"{indent}  [dim]beside: {quantity.title} {value} {candidate.remark}[/dim]")
+
+
+def _plain(text: str) -> str:
+    return text.replace("[", "\\[")

@@ -1,0 +1,77 @@
+"""Evaluate all rules over all joints at once: one rule at a time, in the order of the graph, on columns of sets."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from weldbasis.facts import Facts
+from weldbasis.graph import KnowledgeGraph, build_graph
+from weldbasis.kinds import KINDS, View
+from weldbasis.kinds.limit import violated
+from weldbasis.knowledge import Knowledge, Scope
+from weldbasis.values import Column, Truth, absent_levels, absent_numbers, chosen, is_there
+
+
+@dataclass(frozen=True)
+class Evaluation:
+    """Every quantity's column, given or worked out, and where each limit rule raises its finding.
+
+    `findings` maps a rule's id to the truth of its finding over the rows of the rule's scope. `facts.given`
+    tells what was given; a given value beats the rule that would have worked it out.
+    """
+
+    knowledge: Knowledge
+    graph: KnowledgeGraph
+    facts: Facts
+    columns: Mapping[str, Column]
+    findings: Mapping[str, Truth]
+
+    @cached_property
+    def views(self) -> Mapping[Scope, View]:
+        """The finished columns as joints and as members see them."""
+        return _views(self.knowledge, self.facts, dict(self.columns), complete=True)
+
+
+def evaluate(knowledge: Knowledge, facts: Facts, graph: KnowledgeGraph | None = None) -> Evaluation:
+    """Work out every quantity of every joint.
+
+    `graph` spares building it again when several projects are evaluated. Raises Refused where the rules
+    themselves cannot be used.
+    """
+    graph = graph or build_graph(knowledge)
+    columns: dict[str, Column] = dict(facts.given)
+    views = _views(knowledge, facts, columns)
+    findings: dict[str, Truth] = {}
+    with np.errstate(all="ignore"):
+        for name in graph.order:
+            rule = graph.rules[name]
+            view = views[rule.rule.for_each]
+            for quantity, result in KINDS[rule.rule.kind].evaluate(rule, view).items():
+                columns[quantity] = _given_first(facts.given.get(quantity), result)
+            if rule.rule.kind == "limit":
+                findings[name] = violated(rule, view)
+    for quantity in knowledge.quantities.values():
+        if quantity.id not in columns:
+            rows = views[quantity.of].rows
+            columns[quantity.id] = absent_numbers(rows) if quantity.is_number else absent_levels(rows)
+    return Evaluation(knowledge, graph, facts, columns, findings)
+
+
+def _given_first(given: Column | None, result: Column) -> Column:
+    if given is None:
+        return result
+    there = is_there(given)
+    if bool(there.surely.all()):
+        return given
+    return chosen(there.may, given, result)
+
+
+def _views(
+    knowledge: Knowledge, facts: Facts, columns: dict[str, Column], complete: bool = False
+) -> Mapping[Scope, View]:
+    joints = View(knowledge, "joint", len(facts.joints), facts.joint_of, columns, complete=complete)
+    return {"joint": joints, "member": joints.members}

@@ -1,0 +1,271 @@
+"""Read one joint's reasons out of the columns: a step for every quantity, decisions with their chains, findings."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Iterator, Mapping
+
+from weldbasis.evaluate import Evaluation
+from weldbasis.facts import Origin
+from weldbasis.graph import quantity_node
+from weldbasis.kinds import KINDS, Compiled, View
+from weldbasis.kinds.compiled import gate
+from weldbasis.kinds.condition import failures, judge
+from weldbasis.knowledge import Quantity
+from weldbasis.reading import value_of
+from weldbasis.settle import Narrowing, settle
+from weldbasis.state import demanding_end, state_of
+from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
+from weldbasis.values import is_there
+from weldbasis.words import levels_text, range_text, with_unit
+
+_NAME = re.compile(r"\{(\w+)\}")
+
+
+def trace_joint(
+    evaluation: Evaluation, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]] | None = None
+) -> JointTrace:
+    """All reasons of the joint at `row`.
+
+    `narrowings` hands over what would settle each open decision where it is known already for many joints;
+    else it is worked out for this joint.
+    """
+    if narrowings is None:
+        narrowings = settle(evaluation, [row])
+    steps = {step.ref: step for step in _steps(evaluation, row)}
+    decisions = tuple(_decision(evaluation, quantity, steps) for quantity in evaluation.knowledge.decisions)
+    findings = tuple(findings_of(evaluation, row, narrowings))
+    names = tuple(evaluation.facts.members[at] for at in _member_rows(evaluation, row))
+    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps)
+
+
+def _member_rows(evaluation: Evaluation, row: int) -> range:
+    starts = evaluation.views["member"].starts
+    last = int(starts[row + 1]) if row + 1 < len(starts) else len(evaluation.facts.members)
+    return range(int(starts[row]), last)
+
+
+def _steps(evaluation: Evaluation, row: int) -> Iterator[Step]:
+    order = evaluation.views["joint"].once("quantities in order", lambda: _quantities_in_order(evaluation))
+    members = _member_rows(evaluation, row)
+    for quantity in order:
+        if quantity.of == "joint":
+            yield _step(evaluation, quantity, row, Ref(quantity.id))
+        else:
+            for number, at in enumerate(members, start=1):
+                yield _step(evaluation, quantity, at, Ref(quantity.id, number))
+
+
+def _quantities_in_order(evaluation: Evaluation) -> list[Quantity]:
+    quantities = evaluation.knowledge.quantities
+    given = [quantities[q.id] for name in evaluation.graph.order for q in evaluation.graph.rules[name].gives]
+    roots = [quantity for quantity in quantities.values() if quantity.id not in evaluation.graph.giving]
+    return roots + given
+
+
+def _step(evaluation: Evaluation, quantity: Quantity, row: int, ref: Ref) -> Step:
+    value = value_of(evaluation.columns[quantity.id], quantity, row)
+    given = evaluation.facts.given.get(quantity.id)
+    if given is not None and bool(is_there(given).may[row]):
+        origin = _origin(evaluation, quantity.id, row)
+        return Step(ref, value, "given", sentence=_given_sentence(quantity, value, origin), origin=origin)
+    name = evaluation.graph.giving.get(quantity.id)
+    if name is None:
+        return Step(ref, value, "input-missing", sentence=f"{quantity.title} is not given.")
+    return _rule_step(evaluation, evaluation.graph.rules[name], value, row, ref)
+
+
+def _origin(evaluation: Evaluation, quantity: str, row: int) -> Origin | None:
+    origins = evaluation.facts.origins.get(quantity)
+    return evaluation.facts.origin_list[int(origins[row])] if origins is not None else None
+
+
+def _given_sentence(quantity: Quantity, value: Value, origin: Origin | None) -> str:
+    return f"{quantity.title}: {value_text(quantity, value)}" + (f" ({origin.text})." if origin else ".")
+
+
+def _rule_step(evaluation: Evaluation, rule: Compiled, value: Value, row: int, ref: Ref) -> Step:
+    view = evaluation.views[rule.rule.for_each]
+    explained = KINDS[rule.rule.kind].explain(rule, view, row)
+    reads = tuple(_ref_of(evaluation, name, ref) for name in rule.inputs)
+    reasons = why_not(rule, view, row) if value.presence != "present" else ()
+    if value.presence == "absent":
+        state, sentence = _nothing_given(rule, view, row, reasons)
+        return Step(ref, value, state, rule.rule.id, sentence, "", reads, reasons, explained.candidates)
+    sentence = say(evaluation, rule, value, row)
+    return Step(ref, value, "gave", rule.rule.id, sentence, explained.figures, reads, reasons, explained.candidates)
+
+
+def _ref_of(evaluation: Evaluation, quantity: str, asker: Ref) -> Ref:
+    return Ref(quantity, asker.member if evaluation.knowledge.quantities[quantity].of == "member" else 0)
+
+
+def why_not(rule: Compiled, view: View, row: int) -> tuple[str, ...]:
+    """Why a rule gives, or may give, nothing for one row: what it asks that is not met, limits left, reads missing."""
+    found = [*failures(rule.applies, view, row), *failures(rule.valid, view, row)]
+    for read in rule.reads:
+        there = is_there(view.column(read.quantity.id))
+        if not bool(there.surely[row]):
+            may = bool(there.may[row])
+            found.append(f"{read.quantity.title} {'may have no value' if may else 'has no value here'}")
+    return tuple(dict.fromkeys(found))
+
+
+def _nothing_given(rule: Compiled, view: View, row: int, reasons: tuple[str, ...]) -> tuple[StepState, str]:
+    title = rule.rule.title
+    if rule.applies and not bool(judge_once(rule, view, "applies").may[row]):
+        return "not-applicable", f"{title} does not apply: {'; '.join(failures(rule.applies, view, row))}."
+    if rule.valid and not bool(judge_once(rule, view, "valid").may[row]):
+        return "withheld", f"{title} is withheld: {'; '.join(failures(rule.valid, view, row))}."
+    if bool(gate(rule, view).may[row]) and not reasons:
+        return "withheld", f"{title} gives no value here: nothing in it covers this case."
+    return "input-missing", f"{title} gives no value: {'; '.join(reasons) or 'nothing in it covers this case'}."
+
+
+def judge_once(rule: Compiled, view: View, part: str) -> object:
+    """The truth of one of a rule's conditions, kept on a complete view."""
+    condition = rule.applies if part == "applies" else rule.valid
+    return view.once((part, rule.rule.id), lambda: judge(condition, view))
+
+
+def say(evaluation: Evaluation, rule: Compiled, value: Value, row: int) -> str:
+    """The rule's sentence with this row's values put in; `{result}` is what it gave."""
+    view = evaluation.views[rule.rule.for_each]
+    by_name = {read.name: read for read in rule.reads}
+
+    def word(match: re.Match[str]) -> str:
+        name = match.group(1)
+        if name == "result" and rule.gives:
+            return value_text(rule.gives[0], value, unit=False)
+        read = by_name.get(name)
+        quantity = read.quantity if read else evaluation.knowledge.quantities.get(name)
+        if quantity is None:
+            return match.group(0)
+        shown = value_of(view.column(quantity.id), quantity, row)
+        if read and read.converts and shown.low is not None and shown.high is not None:
+            low, high = (read.factor * end + read.offset for end in (shown.low, shown.high))
+            return range_text(low, high, quantity.decimals)
+        return value_text(quantity, shown, unit=False)
+
+    return _NAME.sub(word, rule.rule.say)
+
+
+def value_text(quantity: Quantity, value: Value, unit: bool = True) -> str:
+    """A value in words with its unit: "110 to 125 °C", "high", "none"."""
+    if value.presence == "absent":
+        return "none"
+    if value.low is None or value.high is None:
+        return levels_text(quantity, value.any_of)
+    text = range_text(value.low, value.high, quantity.decimals)
+    return with_unit(text, quantity.unit) if unit else text
+
+
+def _decision(evaluation: Evaluation, quantity: Quantity, steps: Mapping[Ref, Step]) -> Decision:
+    ref = Ref(quantity.id)
+    step = steps[ref]
+    chain = tuple(dict.fromkeys(_chain(steps, ref, set())))
+    state = state_of(step.value, quantity)
+    governing = governing_rules(steps, ref)
+    return Decision(ref, step.value, state, demanding_end(step.value, quantity), governing, chain)
+
+
+def governing_rules(steps: Mapping[Ref, Step], ref: Ref) -> tuple[str, ...]:
+    """The rules that settled a quantity: follow what governs, and single reads, down to the first real choice."""
+    found: list[str] = []
+    seen: set[Ref] = set()
+    queue = [ref]
+    while queue:
+        step = steps[queue.pop(0)]
+        if step.ref in seen or step.state != "gave":
+            continue
+        seen.add(step.ref)
+        below = [candidate.ref for candidate in step.candidates if candidate.governs]
+        if not below:
+            found.append(step.rule)
+            if len(found) == 1 and _passes_on(step, steps):
+                found.pop()
+                below = [_passes_on(step, steps) or ref]
+        queue += below
+    return tuple(dict.fromkeys(found))
+
+
+def _passes_on(step: Step, steps: Mapping[Ref, Step]) -> Ref | None:
+    """The one worked-out read of a step that only rounds or caps another quantity."""
+    worked = [read for read in step.reads if read in steps and steps[read].state == "gave"]
+    return worked[0] if len(worked) == 1 and "round_up" in step.figures else None
+
+
+def _chain(steps: Mapping[Ref, Step], ref: Ref, seen: set[Ref]) -> Iterator[Ref]:
+    """The steps from a quantity down to the inputs: of a choice only what governs, of all else every read."""
+    if ref in seen or ref not in steps:
+        return
+    seen.add(ref)
+    yield ref
+    step = steps[ref]
+    if step.state == "given":
+        return
+    governing = [candidate.ref for candidate in step.candidates if candidate.governs]
+    for below in governing or step.reads:
+        yield from _chain(steps, below, seen)
+
+
+def findings_of(
+    evaluation: Evaluation, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
+) -> Iterator[Finding]:
+    """The findings of limit rules, then what is open with what would settle it, then what no rule covers."""
+    for name, truth in evaluation.findings.items():
+        rule = evaluation.graph.rules[name]
+        rows = [row] if rule.rule.for_each == "joint" else list(_member_rows(evaluation, row))
+        for at in rows:
+            if bool(truth.may[at]):
+                sure = bool(truth.surely[at])
+                level = rule.body.level if sure else rule.body.level_if_unsure
+                if level != "none":
+                    text = say(evaluation, rule, Value(), at)
+                    yield Finding(level, name, text if sure else f"{text} (not sure: {_unsure(rule, evaluation, at)})",
+                                  sure)
+    for quantity in evaluation.knowledge.decisions:
+        yield from _undecided(evaluation, quantity, row, narrowings)
+
+
+def _unsure(rule: Compiled, evaluation: Evaluation, row: int) -> str:
+    return "; ".join(why_not(rule, evaluation.views[rule.rule.for_each], row)) or "the sets leave it open"
+
+
+def _undecided(
+    evaluation: Evaluation, quantity: Quantity, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
+) -> Iterator[Finding]:
+    if quantity.part_of:
+        return
+    value = value_of(evaluation.columns[quantity.id], quantity, row)
+    state = state_of(value, quantity)
+    rule = evaluation.graph.giving.get(quantity.id, "")
+    if state == "uncovered":
+        yield Finding("hold" if quantity.given == "must" else "caution", rule,
+                      f"{quantity.title}: the rules do not cover this case.")
+    if state == "open":
+        text = f"{quantity.title} is open: {value_text(quantity, value)}"
+        if value.presence == "maybe":
+            text += ", or not covered"
+        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, narrowings.get((row, quantity.id), ()))}")
+
+
+def settling_text(evaluation: Evaluation, narrowings: tuple[Narrowing, ...]) -> str:
+    """What would settle a decision, best first."""
+    if not narrowings:
+        return "No single input of the project settles it."
+    parts = []
+    for narrowing in narrowings[:4]:
+        quantity = evaluation.knowledge.quantities[narrowing.ref.quantity]
+        whose = f" of member {narrowing.ref.member}" if narrowing.ref.member else ""
+        now = value_text(quantity, narrowing.now)
+        gain = "settles it" if narrowing.settles else f"leaves {narrowing.left}"
+        parts.append(f"{quantity.title.lower() if not quantity.symbol else quantity.title}{whose} (now {now}) {gain}")
+    return "To know " + "; ".join(parts) + "."
+
+
+def bears_on_text(evaluation: Evaluation, quantity: str) -> tuple[str, ...]:
+    """The decisions that a quantity bears on, by title, for pages and messages."""
+    below = evaluation.graph.bears_on(quantity_node(quantity))
+    quantities = evaluation.knowledge.quantities
+    return tuple(quantities[n.id].title for n in below if n.sort == "quantity" and quantities[n.id].decision)

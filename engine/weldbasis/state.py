@@ -1,0 +1,43 @@
+"""When a decision is settled, open or uncovered, and which end of a set is the demanding one."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from weldbasis.knowledge import Quantity
+from weldbasis.trace import DecisionState, Value
+from weldbasis.values import ABSENT, PRESENT, Bools, Column, Numbers
+
+
+def state_of(value: Value, quantity: Quantity) -> DecisionState:
+    """Settled when every value left asks the shop for the same thing; uncovered when no rule gives any."""
+    if value.presence == "absent":
+        return "uncovered"
+    if value.presence == "maybe":
+        return "open"
+    if value.low is None or value.high is None:
+        return "settled" if len(value.any_of) == 1 else "open"
+    same = round(value.low, quantity.decimals) == round(value.high, quantity.decimals)
+    return "settled" if same else "open"
+
+
+def open_rows(column: Column, quantity: Quantity) -> Bools:
+    """Where a decision is open, for all joints at once; the same judgement as `state_of`."""
+    there = column.presence != ABSENT
+    if isinstance(column, Numbers):
+        with np.errstate(invalid="ignore"):
+            wide = np.round(column.low, quantity.decimals) != np.round(column.high, quantity.decimals)
+    else:
+        wide = (column.mask & (column.mask - np.uint64(1))) != 0
+    return there & (wide | (column.presence != PRESENT))
+
+
+def demanding_end(value: Value, quantity: Quantity) -> float | str | None:
+    """The end of a set that asks most of the shop; of a quantity without a worse end, its lower or first."""
+    if value.presence == "absent":
+        return None
+    if value.low is None or value.high is None:
+        if not value.any_of:
+            return None
+        return value.any_of[-1] if quantity.worse == "last" else value.any_of[0]
+    return value.high if quantity.worse == "higher" else value.low
