@@ -1,0 +1,1 @@
+"""From files to knowledge: strict YAML with positions, schemas, frozen records."""

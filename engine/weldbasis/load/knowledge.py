@@ -1,0 +1,178 @@
+"""A folder of knowledge into one frozen Knowledge: read, check against schemas, make records, check every reference."""
+
+from __future__ import annotations
+
+import dataclasses
+import hashlib
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any
+
+import rfc8785
+
+from weldbasis.knowledge import Knowledge
+from weldbasis.load.records import (
+    BadRange,
+    Maker,
+    case_from,
+    consumable_from,
+    era_from,
+    grade_from,
+    quantity_from,
+    rule_from,
+    source_from,
+)
+from weldbasis.load.references import duplicate_problem, reference_problems
+from weldbasis.load.schema import RULE_KINDS, schema_problems
+from weldbasis.load.yaml_text import Document, Path_, read_yaml
+from weldbasis.problem import Place, Problem, Refused, nearest
+
+# What part of a record is its meaning: places, layers and topics only say where it stands.
+_NOT_MEANING = frozenset({"place", "places", "layer", "topic"})
+
+
+class _Reading:
+    """Records and problems gathered while a folder is read."""
+
+    def __init__(self, folder: Path) -> None:
+        self.folder = folder
+        self.problems: list[Problem] = []
+        self.found: dict[str, dict[str, Any]] = {
+            kind: {} for kind in ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
+        }
+
+    def documents(self, part: str) -> Iterator[Document]:
+        """Every file below a part of the folder, in order of name."""
+        for path in sorted((self.folder / part).rglob("*.yaml")):
+            try:
+                yield read_yaml(path, _shown(path))
+            except Refused as refused:
+                self.problems += refused.problems
+
+    def fits(self, document: Document, kind: str, path: Path_ = ()) -> bool:
+        """Whether a part of a document fits its schema; what does not is noted."""
+        problems = schema_problems(document, kind, path)
+        self.problems += problems
+        return not problems
+
+    def add(self, kind: str, make: Maker, document: Document, path: Path_) -> None:
+        """Make one record and keep it under its id."""
+        data = document.data
+        for step in path:
+            data = data[step]
+        try:
+            record = make(data, document, path)
+        except BadRange as fault:
+            self.problems.append(document.problem(fault.path, str(fault)))
+            return
+        known = self.found[kind]
+        if record.id in known:
+            self.problems.append(duplicate_problem(kind, record.id, record.place, known[record.id].place))
+        known.setdefault(record.id, record)
+
+
+def load_knowledge(folder: Path) -> Knowledge:
+    """Read a knowledge base. Raises Refused with every problem of every file."""
+    reading = _Reading(folder)
+    head = _head(reading, folder / "kb.yaml")
+    for document in reading.documents("quantities"):
+        topic = Path(document.file).stem
+        _list(reading, document, "quantities", "quantities",
+              lambda data, doc, path, topic=topic: quantity_from(data, doc, path, topic))
+    for document in reading.documents("rules"):
+        _rules(reading, document, head.get("layers", ["published"])[-1])
+    for document in reading.documents("sources"):
+        if reading.fits(document, "source"):
+            reading.add("sources", source_from, document, ())
+    for document in reading.documents("steels"):
+        if reading.fits(document, "steels"):
+            for kind, make in (("grades", grade_from), ("eras", era_from)):
+                for place in range(len(document.data.get(kind, ()))):
+                    reading.add(kind, make, document, (kind, place))
+    for document in reading.documents("consumables"):
+        _list(reading, document, "consumables", "consumables", consumable_from)
+    for document in reading.documents("cases"):
+        _list(reading, document, "cases", "cases", case_from)
+    if reading.problems:
+        raise Refused(reading.problems)
+    knowledge = _assembled(head, reading.found)
+    if problems := list(reference_problems(knowledge)):
+        raise Refused(problems)
+    return knowledge
+
+
+def _shown(path: Path) -> str:
+    """A file's name in messages: from the working folder where it lies below it."""
+    try:
+        return str(path.resolve().relative_to(Path.cwd()))
+    except ValueError:
+        return str(path)
+
+
+def _head(reading: _Reading, path: Path) -> dict[str, Any]:
+    if not path.exists():
+        raise Refused([Problem(Place(str(path)), "there is no such file", "a folder of knowledge starts with kb.yaml",
+                               "name a folder that holds one")])
+    document = read_yaml(path, _shown(path))
+    return document.data if reading.fits(document, "kb") else {}
+
+
+def _list(reading: _Reading, document: Document, kind: str, schema: str, make: Maker) -> None:
+    if reading.fits(document, schema):
+        for place in range(len(document.data[kind])):
+            reading.add(kind, make, document, (kind, place))
+
+
+def _rules(reading: _Reading, document: Document, layer: str) -> None:
+    """One rule, or a small family under `rules:`; each is checked against the schema of its own kind."""
+    data = document.data
+    family = "rules" in data and "id" not in data
+    if family and (extra := sorted(set(data) - {"rules"})):
+        reading.problems.append(document.problem((extra[0],), f"{extra[0]!r} cannot stand beside rules",
+                                                 do="a family of rules holds only the list rules"))
+    paths: list[Path_] = [("rules", place) for place in range(len(data["rules"]))] if family else [()]
+    topic = Path(document.file).parent.name
+    for path in paths:
+        part = data["rules"][path[1]] if path else data
+        kind = part.get("kind") if isinstance(part, dict) else None
+        if kind not in RULE_KINDS:
+            reading.problems.append(document.problem((*path, "kind"), f"{kind!r} is no kind of rule",
+                                                     do=nearest(str(kind), RULE_KINDS)))
+        elif reading.fits(document, f"rule-{kind}", path):
+            reading.add("rules", lambda d, doc, p: rule_from(d, doc, p, topic, layer), document, path)
+    if not family and isinstance(data.get("id"), str) and Path(document.file).stem != data["id"]:
+        reading.problems.append(document.problem(("id",), f"the file is called {Path(document.file).name}, its rule {data['id']}",
+                                                 "a rule is found by its file's name", f"call the file {data['id']}.yaml"))
+
+
+def _assembled(head: dict[str, Any], found: dict[str, dict[str, Any]]) -> Knowledge:
+    ordered = {kind: dict(sorted(records.items())) for kind, records in found.items()}
+    cases = tuple(ordered.pop("cases").values())
+    knowledge = Knowledge(title=head["title"], custodian=head["custodian"], release=str(head["release"]), cases=cases,
+                          **ordered)
+    return dataclasses.replace(knowledge, digest=digest_of_meaning(knowledge))
+
+
+def digest_of_meaning(knowledge: Knowledge) -> str:
+    """The digest of all that decides: comments, layout, order of files and cases do not count."""
+    parts = {
+        kind: {name: meaning_of(record) for name, record in getattr(knowledge, kind).items()}
+        for kind in ("quantities", "rules", "sources", "grades", "eras", "consumables")
+    }
+    return "sha256:" + hashlib.sha256(rfc8785.dumps(parts)).hexdigest()
+
+
+def meaning_of(record: Any) -> Any:
+    """A record as plain data without the fields that only say where it stands."""
+    if dataclasses.is_dataclass(record) and not isinstance(record, type):
+        fields = {field.name: getattr(record, field.name) for field in dataclasses.fields(record)}
+        return {name: meaning_of(value) for name, value in fields.items() if name not in _NOT_MEANING}
+    if isinstance(record, dict):
+        return {str(key): meaning_of(value) for key, value in record.items()}
+    if isinstance(record, list | tuple):
+        return [meaning_of(value) for value in record]
+    if isinstance(record, float) and record in (float("inf"), float("-inf")):
+        return str(record)
+    return record
+
+

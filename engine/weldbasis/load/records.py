@@ -1,0 +1,163 @@
+"""Checked documents into frozen records: one function a kind of record. Shapes are sure here, names are not."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping
+from typing import Any
+
+from weldbasis.knowledge import (
+    Case,
+    Change,
+    Cite,
+    Consumable,
+    Era,
+    Grade,
+    GradeBand,
+    Level,
+    Quantity,
+    Read,
+    Rule,
+    Source,
+)
+from weldbasis.load.yaml_text import Document, Path_
+from weldbasis.problem import Place
+from weldbasis.ranges import Range, parse_range
+
+_RULE_PARTS = frozenset({
+    "id", "version", "title", "kind", "for_each", "gives", "gives_unit", "reads", "applies_when", "valid_within",
+    "direction", "say", "cites", "note", "changes",
+})
+
+
+class BadRange(ValueError):
+    """A text that should be a range and is none, with its path in the document."""
+
+    def __init__(self, path: Path_, message: str) -> None:
+        super().__init__(message)
+        self.path = path
+
+
+def range_at(value: Any, path: Path_) -> Range:
+    """A range, or BadRange with where it stands."""
+    try:
+        return parse_range(value)
+    except ValueError as fault:
+        raise BadRange(path, str(fault)) from fault
+
+
+def quantity_from(data: Mapping[str, Any], document: Document, path: Path_, topic: str) -> Quantity:
+    """A quantity of the vocabulary."""
+    number, levels = data.get("number", {}), data.get("levels", {})
+    titles = levels.get("titles", {})
+    about = number or levels
+    return Quantity(
+        id=data["id"], title=data["title"], of=data["of"], says=data["says"], symbol=data.get("symbol", ""),
+        unit=number.get("unit", ""),
+        range=range_at(number["range"], (*path, "number", "range")) if number else Range(0.0, 0.0),
+        decimals=number.get("decimals", 0),
+        levels=tuple(Level(name, titles.get(name, name.replace("-", " "))) for name in levels.get("order", ())),
+        worse=about.get("worse", "neither"), given=data.get("given", "never"),
+        if_not_given=data.get("if_not_given", "absent"), if_not_given_because=data.get("because", ""),
+        decision=data.get("decision", 0), part_of=data.get("part_of", ""), topic=topic, place=document.place(*path, "id"),
+    )
+
+
+def cites_from(data: Mapping[str, Any], default: tuple[Cite, ...] = ()) -> tuple[Cite, ...]:
+    """The sources a record cites, or those of its file."""
+    found = tuple(Cite(c["source"], c["at"], c["checked"], c.get("covers", "")) for c in data.get("cites", ()))
+    return found or default
+
+
+def rule_from(data: Mapping[str, Any], document: Document, path: Path_, topic: str, layer: str) -> Rule:
+    """A rule; everything that is not common to all kinds is its body."""
+    gives = data.get("gives", ())
+    places = {place[len(path):]: at for place, at in document.places.items() if place[: len(path)] == path}
+    return Rule(
+        id=data["id"], version=data["version"], title=data["title"], kind=data["kind"], for_each=data["for_each"],
+        gives=(gives,) if isinstance(gives, str) else tuple(gives), gives_unit=data.get("gives_unit", ""),
+        reads=tuple(reads_from(data.get("reads", ()))),
+        body={key: value for key, value in data.items() if key not in _RULE_PARTS},
+        say=data["say"], cites=cites_from(data),
+        changes=tuple(Change(c["version"], c["date"], c["what"], c["why"], c["approved_by"]) for c in data["changes"]),
+        applies_when=data.get("applies_when", {}), valid_within=data.get("valid_within", {}),
+        direction=data.get("direction", {}), note=data.get("note", ""), topic=topic, layer=layer,
+        place=document.place(*path, "id"), places=places,
+    )
+
+
+def reads_from(written: Any) -> Iterator[Read]:
+    """The names a body uses, from any of the three ways to write them."""
+    if isinstance(written, list | tuple):
+        yield from (Read(name, name) for name in written)
+        return
+    for name, bound in written.items():
+        if isinstance(bound, str):
+            yield Read(name, bound)
+        else:
+            yield Read(name, bound["quantity"], bound.get("unit", ""))
+
+
+def source_from(data: Mapping[str, Any], document: Document, path: Path_) -> Source:
+    """A source."""
+    return Source(data["id"], data["title"], data["kind"], data.get("edition", ""), data.get("year", 0),
+                  data["how_checked"], data.get("note", ""), document.place(*path, "id"))
+
+
+def ranges_from(data: Mapping[str, Any], path: Path_) -> dict[str, Range]:
+    """Ranges by element symbol."""
+    return {name: range_at(value, (*path, name)) for name, value in data.items()}
+
+
+def grade_from(data: Mapping[str, Any], document: Document, path: Path_) -> Grade:
+    """A steel grade; standard and sources of the file stand where it names none."""
+    top = document.data
+    bands = tuple(
+        GradeBand(
+            thickness=range_at(band["thickness"], (*path, "bands", place, "thickness")),
+            composition=ranges_from(band["composition"], (*path, "bands", place, "composition")),
+            ce_iiw_max=band.get("ce_iiw_max"), pcm_max=band.get("pcm_max"), cet_max=band.get("cet_max"),
+            yield_min=band.get("yield_min"),
+            tensile=range_at(band["tensile"], (*path, "bands", place, "tensile")) if "tensile" in band else None,
+        )
+        for place, band in enumerate(data["bands"])
+    )
+    return Grade(
+        id=data["id"], designation=data["designation"], standard=data.get("standard", top.get("standard", "")),
+        family=data["family"], delivery=tuple(data.get("delivery", ())), group=data.get("group", ""), bands=bands,
+        product=data.get("product", ""), number=data.get("number", ""), p_number=data.get("p_number", ""),
+        aliases=tuple(data.get("aliases", ())), checked=data["checked"], cites=cites_from(data, cites_from(top)),
+        note=data.get("note", ""), place=document.place(*path, "id"),
+    )
+
+
+def era_from(data: Mapping[str, Any], document: Document, path: Path_) -> Era:
+    """An envelope of undocumented steel."""
+    return Era(
+        id=data["id"], title=data["title"], years=data["years"], region=data["region"], family=data["family"],
+        typical=ranges_from(data["typical"], (*path, "typical")),
+        ceilings={name: float(value) for name, value in data["ceilings"].items()}, checked=data["checked"],
+        cites=cites_from(data, cites_from(document.data)), note=data.get("note", ""), place=document.place(*path, "id"),
+    )
+
+
+def consumable_from(data: Mapping[str, Any], document: Document, path: Path_) -> Consumable:
+    """A consumable classification."""
+    return Consumable(
+        id=data["id"], standard=data["standard"], process=data["process"], covering=data["covering"],
+        hydrogen_max=data.get("hydrogen_max"), yield_min=data.get("yield_min"),
+        tensile=range_at(data["tensile"], (*path, "tensile")) if "tensile" in data else None,
+        composition=ranges_from(data.get("composition", {}), (*path, "composition")), checked=data["checked"],
+        cites=cites_from(data), note=data.get("note", ""), place=document.place(*path, "id"),
+    )
+
+
+def case_from(data: Mapping[str, Any], document: Document, path: Path_) -> Case:
+    """A worked example."""
+    return Case(
+        id=data["id"], rule=data["rule"], given=data["given"], expect=data["expect"], nature=data["nature"],
+        source=data["source"], at=data["at"], tolerance=data.get("tolerance", 0.0),
+        arithmetic=data.get("arithmetic", ""), note=data.get("note", ""), place=document.place(*path, "id"),
+    )
+
+
+Maker = Callable[[Mapping[str, Any], Document, Path_], Any]

@@ -1,0 +1,152 @@
+"""JSON Schema checks with messages for people: place, what was expected in plain words, the nearest valid word."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterable, Iterator
+from functools import cache
+from typing import Any
+
+from jsonschema import Draft202012Validator
+from jsonschema.exceptions import ValidationError
+from referencing import Registry, Resource
+
+from weldbasis.load.yaml_text import Document, Path_
+from weldbasis.places import schema_folder
+from weldbasis.problem import Problem, nearest
+
+_TYPES = {
+    "object": "a mapping (key: value)", "array": "a list", "string": "a text", "number": "a number",
+    "integer": "a whole number", "boolean": "true or false",
+}
+RULE_KINDS = ("formula", "table", "gather", "governing", "model", "limit")
+
+
+def schema_problems(document: Document, kind: str, path: Path_ = ()) -> list[Problem]:
+    """Everything that does not fit the schema `kind`, each problem once, in the order of the file.
+
+    `path` leads to the part of the document that is looked at.
+    """
+    part = document.data
+    for step in path:
+        part = part[step]
+    errors = _validator(kind).iter_errors(part)
+    problems = [problem for error in errors for problem in _explained(error, document, path)]
+    return sorted(dict.fromkeys(problems))
+
+
+@cache
+def _registry() -> Registry[Any]:
+    resources = []
+    for file in sorted(schema_folder().glob("*.json")):
+        schema = json.loads(file.read_text(encoding="utf-8"))
+        resources.append((schema["$id"], Resource.from_contents(schema)))
+    return Registry().with_resources(resources)
+
+
+@cache
+def _validator(kind: str) -> Draft202012Validator:
+    schema = _registry().contents(f"urn:weldbasis:schema:1:{kind}")
+    return Draft202012Validator(schema, registry=_registry())
+
+
+def _explained(error: ValidationError, document: Document, path: Path_) -> Iterator[Problem]:
+    where: Path_ = (*path, *error.absolute_path)
+    if error.validator in ("oneOf", "anyOf") and error.context:
+        yield from _best_branch(error, document, path)
+    elif error.validator == "additionalProperties":
+        yield from _unknown_keys(error, document, where)
+    elif error.validator == "required":
+        missing = [name for name in error.validator_value if name not in error.instance]
+        for name in missing[:1] if error.parent is not None else missing:
+            yield document.problem(where, f"{name!r} is missing here", _description(error, name), f"add '{name}: …'")
+    else:
+        what, do = _plain(error)
+        yield document.problem(where, what, _own_description(error), do)
+
+
+def _best_branch(error: ValidationError, document: Document, path: Path_) -> Iterator[Problem]:
+    """Of several alternatives, speak of the one that got furthest; else say what sorts of value fit."""
+    branches: dict[int, list[ValidationError]] = {}
+    for inner in error.context or ():
+        branches.setdefault(int(inner.schema_path[0]), []).append(inner)
+    shallow = len(error.absolute_path)
+    deep = [b for b in branches.values() if all(len(e.absolute_path) > shallow or e.validator not in ("type", "required")
+                                               for e in b)]
+    if len(deep) >= 1:
+        best = min(deep, key=len)
+        for inner in best:
+            yield from _explained(inner, document, path)
+        return
+    where: Path_ = (*path, *error.absolute_path)
+    needed = [e.validator_value for b in branches.values() for e in b if e.validator == "required"]
+    if needed:
+        words = " or ".join(repr(names[0]) for names in needed)
+        yield document.problem(where, f"one of {words} is missing here", do="add the one that fits")
+        return
+    kinds = dict.fromkeys(_type_words(e.validator_value) for b in branches.values() for e in b if e.validator == "type")
+    what = f"{_seen(error.instance)} cannot stand here; {' or '.join(kinds) or 'another value'} is wanted"
+    yield document.problem(where, what, _own_description(error))
+
+
+def _unknown_keys(error: ValidationError, document: Document, where: Path_) -> Iterator[Problem]:
+    schema = error.schema
+    assert isinstance(schema, dict)
+    known = [*schema.get("properties", {})]
+    patterns = schema.get("patternProperties", {})
+    for pattern in patterns:
+        known += [word for word in pattern.strip("^$()").split("|") if word.isalnum()]
+    validator = Draft202012Validator({"patternProperties": dict.fromkeys(patterns, False)})
+    for key in error.instance:
+        if key not in known and not (patterns and not validator.is_valid({key: 0})):
+            yield document.problem((*where, key), f"{key!r} is not known here", "", nearest(str(key), known))
+
+
+def _plain(error: ValidationError) -> tuple[str, str]:
+    value, wanted = _seen(error.instance), error.validator_value
+    match error.validator:
+        case "type":
+            return f"{value} stands where {_type_words(wanted)} is wanted", ""
+        case "enum":
+            return f"{value} is not one of the words known here", nearest(str(error.instance), map(str, wanted))
+        case "const":
+            return f"{value} stands where {wanted!r} is wanted", f"write {wanted}"
+        case "pattern":
+            return f"{value} is not written as expected here", f"it must fit the pattern {wanted}"
+        case "minLength" | "minItems" | "minProperties":
+            return "this is empty, or holds too little", f"at least {wanted} wanted"
+        case "maxItems":
+            return f"this holds more than {wanted} entries", ""
+        case "uniqueItems":
+            return "an entry stands here twice", "keep one of them"
+        case "minimum":
+            return f"{value} is below the least value {wanted}", ""
+        case "maximum":
+            return f"{value} is above the greatest value {wanted}", ""
+        case _:
+            return f"{value} does not fit here", ""
+
+
+def _type_words(wanted: str | Iterable[str]) -> str:
+    names = [wanted] if isinstance(wanted, str) else list(wanted)
+    return " or ".join(_TYPES.get(name, name) for name in names)
+
+
+def _seen(value: Any) -> str:
+    if isinstance(value, dict):
+        return "a mapping"
+    if isinstance(value, list):
+        return "a list"
+    text = repr(value) if not isinstance(value, bool) else str(value).lower()
+    return text if len(text) <= 60 else text[:57] + "…'"
+
+
+def _own_description(error: ValidationError) -> str:
+    schema = error.schema
+    return str(schema.get("description", "")) if isinstance(schema, dict) else ""
+
+
+def _description(error: ValidationError, name: str) -> str:
+    schema = error.schema
+    part = schema.get("properties", {}).get(name, {}) if isinstance(schema, dict) else {}
+    return str(part.get("description", "")) if isinstance(part, dict) else ""
