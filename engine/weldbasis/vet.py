@@ -107,7 +107,9 @@ def table_gaps(rule: Compiled) -> Iterator[VetFinding]:
     if not isinstance(rule.body, Table) or not rule.body.axes:
         return
     inside = [_segments_inside(rule, place) for place in range(len(rule.body.axes))]
-    gaps = np.argwhere((rule.body.won == -1) & np.logical_and.reduce(np.ix_(*inside)))
+    within = np.zeros(rule.body.won.shape, np.bool_)
+    within[np.ix_(*inside)] = True
+    gaps = np.argwhere((rule.body.won == -1) & within)
     if len(gaps):
         examples = "; ".join(describe_cell(rule.body.axes, tuple(int(s) for s in gap)) for gap in gaps[:_MOST_EXAMPLES])
         more = f" and {len(gaps) - _MOST_EXAMPLES} more" if len(gaps) > _MOST_EXAMPLES else ""

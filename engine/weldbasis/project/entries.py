@@ -1,0 +1,54 @@
+"""What a project is once read: its joints, its steels, its facts, and the plain data whose digest names its inputs."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from weldbasis.facts import Facts, Origin
+
+
+@dataclass(frozen=True)
+class JointEntry:
+    """A joint as a page heads it."""
+
+    id: str
+    title: str
+    form: str
+    members: tuple[str, ...]
+    place: str
+    note: str = ""
+
+
+@dataclass(frozen=True)
+class SteelEntry:
+    """A steel of the project as pages list it: what is known of it and from what paper."""
+
+    id: str
+    title: str
+    grade: str
+    era: str
+    certificate: str
+    heat: str
+    kind: str
+    composition: Mapping[str, tuple[float, float]]
+    samples: int
+    origin: Origin
+
+
+@dataclass(frozen=True)
+class Project:
+    """A project, read and checked."""
+
+    id: str
+    title: str
+    rules: str
+    contract: tuple[str, ...]
+    folder: Path
+    joints: tuple[JointEntry, ...]
+    steels: Mapping[str, SteelEntry]
+    facts: Facts
+    meaning: Mapping[str, Any]
+    description: str = ""
