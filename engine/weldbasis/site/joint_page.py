@@ -1,0 +1,115 @@
+"""A joint's page: decisions, why, methods, inputs, findings, the whole trace."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from weldbasis.knowledge import Knowledge, Quantity
+from weldbasis.project import JointEntry, Project
+from weldbasis.site.pictures import Cycle, method_strip, thermal_cycle
+from weldbasis.site.render import page
+from weldbasis.trace import Candidate, Decision, JointTrace, Ref, Step
+
+
+@dataclass(frozen=True)
+class Line:
+    """A step as the page shows it: how deep in the chain, its quantity, its sources."""
+
+    depth: int
+    step: Step
+    quantity: Quantity
+    member: str
+
+
+def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace: JointTrace, digest: str) -> str:
+    """The HTML of a joint's page."""
+    shown = [d for d in trace.decisions if not (knowledge.quantities[d.ref.quantity].part_of and d.state == "uncovered")]
+    main = [d for d in shown if not knowledge.quantities[d.ref.quantity].part_of]
+    return page(
+        "joint.html", project=project, entry=entry, trace=trace, quantities=knowledge.quantities, rules=knowledge.rules,
+        sources=knowledge.sources, shown=shown, main=main, digest=digest,
+        picture=thermal_cycle(cycle_of(trace)),
+        chains={d.ref.quantity: chain_lines(knowledge, trace, d) for d in main},
+        methods=methods_of(knowledge, trace), strip=_strip(knowledge, trace),
+        given=given_lines(knowledge, trace), lines=[_line(knowledge, trace, 0, s) for s in trace.steps.values()
+                                                    if s.state in ("gave", "withheld")],
+        why_none=lambda step: withheld_reasons(trace, step),
+    )
+
+
+def _line(knowledge: Knowledge, trace: JointTrace, depth: int, step: Step) -> Line:
+    member = trace.members[step.ref.member - 1] if step.ref.member else ""
+    number = f"{step.ref.member}: " if step.ref.member else ""
+    return Line(depth, step, knowledge.quantities[step.ref.quantity], f"{number}{member}" if member else "")
+
+
+def chain_lines(knowledge: Knowledge, trace: JointTrace, decision: Decision) -> list[Line]:
+    """The chain of a decision with depths; parts that say the very same of another member are left to the full trace."""
+    depths: dict[Ref, int] = {decision.ref: 0}
+    lines: list[Line] = []
+    said: set[tuple[str, str]] = set()
+    for ref in decision.chain:
+        step = trace.steps[ref]
+        depth = depths.setdefault(ref, 0)
+        for below in [c.ref for c in step.candidates if c.governs] or step.reads:
+            depths.setdefault(below, depth + 1)
+        if step.state == "input-missing" or (step.ref.quantity, step.sentence) in said:
+            continue
+        said.add((step.ref.quantity, step.sentence))
+        lines.append(_line(knowledge, trace, depth, step))
+    return lines
+
+
+def given_lines(knowledge: Knowledge, trace: JointTrace) -> list[Line]:
+    """What was given, joint first, then part by part."""
+    lines = [_line(knowledge, trace, 0, s) for s in trace.steps.values()
+             if s.state == "given" and not s.ref.quantity.startswith("contract_")]
+    return sorted(lines, key=lambda line: line.step.ref.member)
+
+
+def methods_of(knowledge: Knowledge, trace: JointTrace) -> list[tuple[Quantity, Candidate, Step]]:
+    """Every preheat method with its value, or with why it gave none."""
+    step = trace.steps.get(Ref("preheat_basis"))
+    if step is None:
+        return []
+    general = trace.steps.get(Ref("preheat_general"))
+    governing = {c.ref for s in (step, general) if s for c in s.candidates if c.governs}
+    found = []
+    for candidate in step.candidates:
+        if candidate.ref.quantity in ("preheat_contract", "preheat_general"):
+            continue
+        marked = Candidate(candidate.ref, candidate.value, candidate.ref in governing, candidate.taken, candidate.behind,
+                           candidate.remark)
+        found.append((knowledge.quantities[candidate.ref.quantity], marked, trace.steps[candidate.ref]))
+    return found
+
+
+def withheld_reasons(trace: JointTrace, step: Step) -> tuple[str, ...]:
+    """Why a method gave nothing: its own reasons, or those of the part it was gathered from."""
+    if step.state in ("not-applicable", "withheld") and step.reasons:
+        return step.reasons
+    for candidate in step.candidates:
+        below = trace.steps.get(candidate.ref)
+        if below and below.value.presence == "absent" and below.reasons:
+            return tuple(below.reasons)
+    return step.reasons
+
+
+def _strip(knowledge: Knowledge, trace: JointTrace) -> str:
+    return method_strip([(q.title, c) for q, c, _ in methods_of(knowledge, trace)])
+
+
+def cycle_of(trace: JointTrace) -> Cycle:
+    """The figures of the thermal cycle."""
+    def span(name: str) -> tuple[float, float] | None:
+        step = trace.steps.get(Ref(name))
+        return (step.value.low, step.value.high) if step and step.value.low is not None and step.value.high is not None else None
+
+    def number(name: str, high: bool = False) -> float | None:
+        found = span(name)
+        return None if found is None else found[1] if high else found[0]
+
+    return Cycle(span("ambient"), span("min_preheat"), span("max_interpass"), span("hydrogen_release_temp"),
+                 number("hydrogen_release_time", True), number("pwht_temp_min", True), number("pwht_temp_max"),
+                 number("pwht_hold", True))
+

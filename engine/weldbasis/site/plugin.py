@@ -1,0 +1,148 @@
+"""The mkdocs plugin that feeds generated pages in memory and fills the many pages of joints and rules from one frame.
+
+Pages that stand in the navigation go through mkdocs. Joint, rule and steel pages would each cost a run of the whole
+theme; instead the theme renders one empty frame per depth of folder, and their bodies are put into copies of it.
+"""
+
+from __future__ import annotations
+
+import json
+from html import escape
+from pathlib import Path
+
+from mkdocs.config.defaults import MkDocsConfig
+from mkdocs.plugins import BasePlugin, event_priority
+from mkdocs.structure.files import File, Files
+
+from weldbasis.record import canonical_bytes
+from weldbasis.site.content import Content, Decided, Progress, joints_csv
+from weldbasis.site.joint_page import joint_body
+from weldbasis.site.pages import (
+    home_body,
+    project_body,
+    rule_body,
+    rules_body,
+    sources_body,
+    standard_body,
+    standards_of,
+    steels_body,
+    vocabulary_body,
+)
+from weldbasis.views import decision_text
+
+_TITLE, _BODY = "WBTITLEWB", "WBBODYWB"
+_FRAMES = {1: "rules/_frame.md", 3: "projects/_frame/joints/_frame.md"}
+_SEARCH = "search/search_index.json"
+
+
+class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  # mkdocs' base is untyped
+    """Generated pages in memory; `content` is set by publish before the build."""
+
+    content: Content
+    assets: Path
+    progress: Progress
+    pages: int
+
+    def on_files(self, files: Files, *, config: MkDocsConfig) -> Files:
+        """Add generated pages, downloads, assets and the empty frames."""
+        for uri, title, body in self._navigated():
+            files.append(File.generated(config, uri, content=_markdown(title, body, exclude=uri.startswith("vocab"))))
+        for decided in self.content.projects:
+            folder = f"projects/{decided.project.id}"
+            files.append(File.generated(config, f"{folder}/record.json", content=canonical_bytes(decided.record)))
+            files.append(File.generated(config, f"{folder}/joints.csv", content=joints_csv(self.content.knowledge, decided)))
+        for path in sorted(p for p in self.assets.rglob("*") if p.is_file()):
+            files.append(File.generated(config, f"assets/{path.relative_to(self.assets).as_posix()}", content=path.read_bytes()))
+        for uri in _FRAMES.values():
+            files.append(File.generated(config, uri, content=_markdown(_TITLE, f"<p>{_BODY}</p>", exclude=True)))
+        return files
+
+    def _navigated(self) -> list[tuple[str, str, str]]:
+        content = self.content
+        pages = [("index.md", "Projects", home_body(content))]
+        pages += [(f"projects/{d.project.id}/index.md", d.project.title, project_body(content, d)) for d in content.projects]
+        pages += [
+            ("rules/index.md", "Rules", rules_body(content)), ("steels/index.md", "Steels", steels_body(content)),
+            ("sources/index.md", "Sources", sources_body(content)),
+            ("vocabulary/index.md", "Vocabulary", vocabulary_body(content)),
+        ]
+        return pages
+
+    @event_priority(-50)  # after search has written its index, before offline copies it
+    def on_post_build(self, *, config: MkDocsConfig) -> None:
+        """Fill the frames, add the pages' titles to the search index, take the frames away."""
+        site = Path(config.site_dir)
+        frames = {depth: (site / uri).with_suffix(".html") for depth, uri in _FRAMES.items()}
+        texts = {depth: path.read_text(encoding="utf-8") for depth, path in frames.items()}
+        found = [self._rule_pages(site, texts[1]), self._steel_pages(site, texts[1])]
+        found += [self._joint_pages(site, texts[3], decided) for decided in self.content.projects]
+        for path in frames.values():
+            path.unlink()
+        frames[3].parent.rmdir()
+        frames[3].parent.parent.rmdir()
+        self.pages = len(self._navigated_names()) + sum(len(entries) for entries in found)
+        index = site / _SEARCH
+        data = json.loads(index.read_text(encoding="utf-8"))
+        data["docs"] = [doc for doc in data["docs"] if "_frame" not in doc["location"]]
+        data["docs"] += [entry for entries in found for entry in entries]
+        index.write_text(json.dumps(data, ensure_ascii=False, separators=(",", ":")), encoding="utf-8")
+
+    def _navigated_names(self) -> list[str]:
+        return ["home", "rules", "steels", "sources", "vocabulary", "how-to-read", "cautions",
+                *[d.project.id for d in self.content.projects]]
+
+    def _rule_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
+        governed = self._governed()
+        entries = []
+        for rule in self.content.knowledge.rules.values():
+            body = rule_body(self.content, rule, governed.get(rule.id, []))
+            entries.append(_write(site, f"rules/{rule.id}.html", frame, rule.title, body, f"rule {rule.id}, {rule.topic}"))
+        return entries
+
+    def _governed(self) -> dict[str, list[tuple[str, list[tuple[str, str]]]]]:
+        found: dict[str, dict[str, list[tuple[str, str]]]] = {}
+        for decided in self.content.projects:
+            for trace in decided.traces:
+                address = f"../projects/{decided.project.id}/joints/{decided.files[trace.joint]}"
+                for rule in dict.fromkeys(r for d in trace.decisions for r in d.governing):
+                    found.setdefault(rule, {}).setdefault(decided.project.title, []).append((trace.joint, address))
+        return {rule: list(projects.items()) for rule, projects in found.items()}
+
+    def _steel_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
+        entries = []
+        for title, file, grades in standards_of(self.content):
+            words = ", ".join(grade.designation for grade in grades)
+            entries.append(_write(site, f"steels/{file}", frame, title, standard_body(title, grades), words))
+        return entries
+
+    def _joint_pages(self, site: Path, frame: str, decided: Decided) -> list[dict[str, str]]:
+        entries = []
+        digests = {joint["joint"]: joint["digest"] for joint in decided.record["joints"]}
+        quantities = self.content.knowledge.quantities
+        for number, (entry, trace) in enumerate(zip(decided.project.joints, decided.traces, strict=True)):
+            body = joint_body(decided.project, entry, self.content.knowledge, trace, digests[entry.id])
+            words = "; ".join(f"{quantities[d.ref.quantity].title} {decision_text(quantities[d.ref.quantity], d)}"
+                              for d in trace.decisions[:2])
+            title = f"{entry.id} {entry.title}".strip()
+            uri = f"projects/{decided.project.id}/joints/{decided.files[entry.id]}"
+            entries.append(_write(site, uri, frame, title, body, f"{', '.join(trace.members[:-1])}. {words}"))
+            self.progress(number + 1 + len(decided.traces), 2 * len(decided.traces))
+        return entries
+
+
+def _markdown(title: str, body: str, exclude: bool) -> str:
+    """A page whose body is finished HTML; the heading stays Markdown so that the theme knows it."""
+    search = "search:\n  exclude: true\n" if exclude else ""
+    heading = "" if body.lstrip().startswith("<p>" + _BODY) else f"# {title}\n\n"
+    return f"---\ntitle: {json.dumps(title, ensure_ascii=False)}\nhide: [navigation, toc]\n{search}---\n\n{heading}{body}\n"
+
+
+def _write(site: Path, uri: str, frame: str, title: str, body: str, words: str) -> dict[str, str]:
+    """Put a body into the frame and write the page; its entry for the search index is returned."""
+    head, _, tail = frame.partition(f"<p>{_BODY}</p>")
+    plain = escape(title)
+    before = head.replace(f'<h1>{_TITLE}</h1>', "").replace(_TITLE, plain)
+    path = site / uri
+    path.parent.mkdir(parents=True, exist_ok=True)
+    path.write_text(f"{before}{body}{tail.replace(_TITLE, plain)}", encoding="utf-8")
+    return {"location": uri, "title": plain, "text": escape(words)}
