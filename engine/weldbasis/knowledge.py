@@ -229,9 +229,9 @@ class Case:
     place: Place = Place("")
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Knowledge:
-    """A whole knowledge base, each kind of record by its id."""
+    """A whole knowledge base, each kind of record by its id; two are the same when their digests are."""
 
     title: str
     custodian: str

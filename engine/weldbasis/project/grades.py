@@ -37,9 +37,9 @@ def squeezed(text: str) -> str:
 
 
 @cache
-def _spellings(grades: tuple[Grade, ...]) -> Mapping[str, tuple[str, ...]]:
+def _spellings(knowledge: Knowledge) -> Mapping[str, tuple[str, ...]]:
     found: dict[str, dict[str, None]] = {}
-    for grade in grades:
+    for grade in knowledge.grades.values():
         for name in (grade.id, grade.designation, *grade.aliases):
             found.setdefault(squeezed(name), {})[grade.id] = None
     return {name: tuple(ids) for name, ids in found.items()}
@@ -52,7 +52,7 @@ def find_grade(text: str, knowledge: Knowledge) -> Grade:
     exact = [grade for grade in knowledge.grades.values() if text in (grade.designation, *grade.aliases)]
     if len(exact) == 1:
         return exact[0]
-    table = _spellings(_grades(knowledge))
+    table = _spellings(knowledge)
     word = squeezed(text)
     for candidate in (word, re.sub(r"\+(?:n|ar|m|qt|nt)$", "", word)):
         ids = table.get(candidate, ())
@@ -63,10 +63,6 @@ def find_grade(text: str, knowledge: Knowledge) -> Grade:
     near = get_close_matches(word, table, n=3, cutoff=0.6)
     names = [knowledge.grades[table[name][0]].designation for name in near]
     raise NoSuchGrade(f"no grade goes by {text!r}" + (f"; nearest are {', '.join(names)}" if names else ""))
-
-
-def _grades(knowledge: Knowledge) -> tuple[Grade, ...]:
-    return tuple(knowledge.grades.values())
 
 
 def limits_in(grade: Grade, thickness: Range) -> GradeLimits | None:
