@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -36,18 +36,23 @@ class Evaluation:
         return _views(self.knowledge, self.facts, dict(self.columns), complete=True)
 
 
-def evaluate(knowledge: Knowledge, facts: Facts, graph: KnowledgeGraph | None = None) -> Evaluation:
-    """Work out every quantity of every joint.
+def evaluate(
+    knowledge: Knowledge, facts: Facts, graph: KnowledgeGraph | None = None, wanted: Iterable[str] | None = None
+) -> Evaluation:
+    """Work out every quantity of every joint, or only what the `wanted` quantities rest on.
 
     `graph` spares building it again when several projects are evaluated. Raises Refused where the rules
     themselves cannot be used.
     """
     graph = graph or build_graph(knowledge)
+    needed = None if wanted is None else graph.rules_for(tuple(wanted))
     columns: dict[str, Column] = dict(facts.given)
     views = _views(knowledge, facts, columns)
     findings: dict[str, Truth] = {}
     with np.errstate(all="ignore"):
         for name in graph.order:
+            if needed is not None and name not in needed:
+                continue
             rule = graph.rules[name]
             view = views[rule.rule.for_each]
             for quantity, result in KINDS[rule.rule.kind].evaluate(rule, view).items():

@@ -60,6 +60,11 @@ class KnowledgeGraph:
         """What stands directly below a node."""
         return self._sorted(set(self.graph.successors(node)))
 
+    def rules_for(self, quantities: tuple[str, ...]) -> frozenset[str]:
+        """The rules that these quantities rest on."""
+        above = {node for name in quantities for node in nx.ancestors(self.graph, quantity_node(name))}
+        return frozenset(node.id for node in above if node.sort == "rule")
+
     def given_inputs(self, quantity: str) -> tuple[str, ...]:
         """The quantities at the roots above a quantity: what a project has to say for it."""
         above = [*self.rests_on(quantity_node(quantity)), quantity_node(quantity)]

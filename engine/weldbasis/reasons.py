@@ -16,7 +16,7 @@ from weldbasis.reading import value_of
 from weldbasis.settle import Narrowing, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
-from weldbasis.values import is_there
+from weldbasis.values import Truth, may_be_at, surely_at
 from weldbasis.words import levels_text, range_text, with_unit
 
 _NAME = re.compile(r"\{(\w+)\}")
@@ -66,7 +66,7 @@ def _quantities_in_order(evaluation: Evaluation) -> list[Quantity]:
 def _step(evaluation: Evaluation, quantity: Quantity, row: int, ref: Ref) -> Step:
     value = value_of(evaluation.columns[quantity.id], quantity, row)
     given = evaluation.facts.given.get(quantity.id)
-    if given is not None and bool(is_there(given).may[row]):
+    if given is not None and may_be_at(given, row):
         origin = _origin(evaluation, quantity.id, row)
         return Step(ref, value, "given", sentence=_given_sentence(quantity, value, origin), origin=origin)
     name = evaluation.graph.giving.get(quantity.id)
@@ -104,9 +104,9 @@ def why_not(rule: Compiled, view: View, row: int) -> tuple[str, ...]:
     """Why a rule gives, or may give, nothing for one row: what it asks that is not met, limits left, reads missing."""
     found = [*failures(rule.applies, view, row), *failures(rule.valid, view, row)]
     for read in rule.reads:
-        there = is_there(view.column(read.quantity.id))
-        if not bool(there.surely[row]):
-            may = bool(there.may[row])
+        column = view.column(read.quantity.id)
+        if not surely_at(column, row):
+            may = may_be_at(column, row)
             found.append(f"{read.quantity.title} {'may have no value' if may else 'has no value here'}")
     return tuple(dict.fromkeys(found))
 
@@ -122,7 +122,7 @@ def _nothing_given(rule: Compiled, view: View, row: int, reasons: tuple[str, ...
     return "input-missing", f"{title} gives no value: {'; '.join(reasons) or 'nothing in it covers this case'}."
 
 
-def judge_once(rule: Compiled, view: View, part: str) -> object:
+def judge_once(rule: Compiled, view: View, part: str) -> Truth:
     """The truth of one of a rule's conditions, kept on a complete view."""
     condition = rule.applies if part == "applies" else rule.valid
     return view.once((part, rule.rule.id), lambda: judge(condition, view))

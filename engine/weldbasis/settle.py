@@ -37,7 +37,7 @@ class Narrowing:
 class _Trial:
     joint: int
     ref: Ref
-    row: int
+    rows: tuple[int, ...]
     pinned: float | int
 
 
@@ -50,7 +50,8 @@ def settle(evaluation: Evaluation, rows: Sequence[int]) -> Mapping[tuple[int, st
     trials = [trial for row in undecided for trial in _trials(evaluation, row, undecided[row])]
     if not trials:
         return {}
-    outcome = evaluate(evaluation.knowledge, _repeated(evaluation, trials), evaluation.graph)
+    asked = dict.fromkeys(decision.id for decisions in undecided.values() for decision in decisions)
+    outcome = evaluate(evaluation.knowledge, _repeated(evaluation, trials), evaluation.graph, asked)
     found: dict[tuple[int, str], list[Narrowing]] = {}
     at = 0
     while at < len(trials):
@@ -86,10 +87,19 @@ def _trials(evaluation: Evaluation, row: int, decisions: Sequence[Quantity]) -> 
     found = []
     for name in names:
         quantity = evaluation.knowledge.quantities[name]
-        places = [(row, 0)] if quantity.of == "joint" else [(first + k, k + 1) for k in range(count)]
-        for at, member in places:
-            found += [_Trial(row, Ref(name, member), at, end) for end in _ends(given[name], quantity, at)]
+        places = [((row,), 0)] if quantity.of == "joint" else _steels(evaluation.facts, first, count)
+        for rows, member in places:
+            ends = _ends(given[name], quantity, rows[0])
+            found += [_Trial(row, Ref(name, member), rows, end) for end in ends]
     return found
+
+
+def _steels(facts: Facts, first: int, count: int) -> list[tuple[tuple[int, ...], int]]:
+    """Member rows of a joint by steel: parts of one steel are known, or not, together."""
+    by_name: dict[str, list[int]] = {}
+    for row in range(first, first + count):
+        by_name.setdefault(facts.members[row], []).append(row)
+    return [(tuple(rows), rows[0] - first + 1) for rows in by_name.values()]
 
 
 def _ends(column: Column, quantity: Quantity, row: int) -> list[float | int]:
@@ -118,8 +128,9 @@ def _repeated(evaluation: Evaluation, trials: Sequence[_Trial]) -> Facts:
     }
     pins: dict[str, list[tuple[int, float | int]]] = {}
     for number, trial in enumerate(trials):
-        at = number if not trial.ref.member else int(offsets[number]) + trial.ref.member - 1
-        pins.setdefault(trial.ref.quantity, []).append((at, trial.pinned))
+        for row in trial.rows:
+            at = number if not trial.ref.member else int(offsets[number] + row - starts[number])
+            pins.setdefault(trial.ref.quantity, []).append((at, trial.pinned))
     for name, pinned in pins.items():
         given[name] = _pinned(given[name], pinned)
     return Facts(tuple(facts.joints[j] for j in joints), tuple(facts.members[m] for m in members), joint_of, given)
@@ -147,8 +158,7 @@ def _narrowing(
         return None
     settles = all(state_of(end, decision) == "settled" for end in ends)
     asked = evaluation.knowledge.quantities[trial.ref.quantity]
-    whose = trial.row
-    known = value_of(evaluation.facts.given[asked.id], asked, whose)
+    known = value_of(evaluation.facts.given[asked.id], asked, trial.rows[0])
     return Narrowing(trial.ref, known, _left(decision, ends), settles, share)
 
 

@@ -155,6 +155,16 @@ def is_there(column: Column) -> Truth:
     return Truth((column.presence & PRESENT) != 0, column.presence == PRESENT)
 
 
+def may_be_at(column: Column, row: int) -> bool:
+    """Whether there may be a value in one row."""
+    return bool(column.presence[row] & PRESENT)
+
+
+def surely_at(column: Column, row: int) -> bool:
+    """Whether there surely is a value in one row."""
+    return bool(column.presence[row] == PRESENT)
+
+
 def numbers_where(there: Truth, low: Floats, high: Floats, flags: Bytes) -> Numbers:
     """Ranges kept where there may be a value, nan and absent elsewhere."""
     if bool(there.may.all()):

@@ -71,9 +71,18 @@ def plus(one: Interval, other: Interval) -> Interval:
 
 def times(one: Interval, other: Interval) -> Interval:
     """Product of intervals; zero times infinity counts as zero, since a slope of zero moves nothing."""
-    products = [np.nan_to_num(a * b, nan=0.0, posinf=np.inf, neginf=-np.inf) for a in one for b in other]
-    low = np.minimum(np.minimum(products[0], products[1]), np.minimum(products[2], products[3]))
-    high = np.maximum(np.maximum(products[0], products[1]), np.maximum(products[2], products[3]))
+    if one[0] is one[1]:
+        products = [one[0] * other[0], one[0] * other[1]]
+    elif other[0] is other[1]:
+        products = [one[0] * other[0], one[1] * other[0]]
+    else:
+        products = [a * b for a in one for b in other]
+    if not all(np.isfinite(product).all() for product in products):
+        products = [np.where(np.isnan(product), 0.0, product) for product in products]
+    low, high = np.minimum(products[0], products[1]), np.maximum(products[0], products[1])
+    if len(products) == 4:
+        low = np.minimum(low, np.minimum(products[2], products[3]))
+        high = np.maximum(high, np.maximum(products[2], products[3]))
     return low, high
 
 

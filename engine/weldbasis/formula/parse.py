@@ -74,9 +74,9 @@ class Call:
 Node: TypeAlias = Number | Name | Minus | Binary | Call
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Formula:
-    """A parsed formula and the text it came from."""
+    """A parsed formula and the text it came from; compared by identity, so that what is made of it can be kept."""
 
     root: Node
     text: str

@@ -22,7 +22,7 @@ def value_at(formula: Formula, values: Mapping[str, Floats]) -> Floats:
     Raises KeyError where a name of the formula has no value.
     """
     with np.errstate(all="ignore"):
-        return np.asarray(_program(formula.root)(values), dtype=np.float64)
+        return np.asarray(_compiled(formula)(values), dtype=np.float64)
 
 
 def round_up(number: Floats, step: Floats) -> Floats:
@@ -58,6 +58,10 @@ BINARY_AT: Mapping[str, Callable[[Floats, Floats], Floats]] = {
 
 
 @cache
+def _compiled(formula: Formula) -> Program:
+    return _program(formula.root)
+
+
 def _program(node: Node) -> Program:
     if isinstance(node, Number):
         constant = np.float64(node.value)

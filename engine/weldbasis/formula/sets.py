@@ -9,13 +9,14 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from functools import cache
 from typing import TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
 
 from weldbasis.formula.intervals import Jet, jet_of
-from weldbasis.formula.parse import Binary, Formula, Minus, Number
+from weldbasis.formula.parse import Formula, Minus
 from weldbasis.formula.points import value_at
 from weldbasis.values import Bools, Floats, Ints
 
@@ -52,8 +53,11 @@ def range_over(formula: Formula, lows: Mapping[str, Floats], highs: Mapping[str,
     with np.errstate(all="ignore"):
         for start in range(0, len(at), _CHUNK):
             part = at[start : start + _CHUNK]
-            box_low, box_high = _stacked(names, lows, part), _stacked(names, highs, part)
-            low[part], high[part], exact[part], defined[part] = _hull(formula, box_low, box_high)
+            boxes = np.vstack([_stacked(names, lows, part), _stacked(names, highs, part)])
+            # Joints of one steel share their boxes; each different box is worked once.
+            different, back = np.unique(boxes, axis=1, return_inverse=True)
+            found = _hull(formula, different[: len(names)], different[len(names) :])
+            low[part], high[part], exact[part], defined[part] = (values[back.reshape(-1)] for values in found)
     return Ranges(low, high, exact, defined)
 
 
@@ -94,16 +98,16 @@ def _hull(formula: Formula, low: Box, high: Box) -> tuple[Floats, Floats, Bools,
         monotone[np.flatnonzero(monotone)[~good]] = False
     rest = np.flatnonzero(~monotone)
     if len(rest):
-        negative = Formula(_negated(formula), formula.text)
+        negative = _negative(formula)
         least[rest], exact_low = _least(formula, low[:, rest], high[:, rest])
         highest, exact_high = _least(negative, low[:, rest], high[:, rest])
         most[rest], exact[rest] = -highest, exact_low & exact_high
     return least, most, exact & jet.defined, jet.defined & np.isfinite(least)
 
 
-def _negated(formula: Formula) -> Minus | Binary | Number:
-    root = formula.root
-    return Minus(root) if not isinstance(root, Number) else Number(-root.value, root.spelling)
+@cache
+def _negative(formula: Formula) -> Formula:
+    return Formula(Minus(formula.root), f"-({formula.text})")
 
 
 def _jet(formula: Formula, low: Box, high: Box) -> Jet:
@@ -121,14 +125,19 @@ def _signs(formula: Formula, jet: Jet) -> tuple[NDArray[np.bool_], NDArray[np.bo
     return rising, falling & ~rising
 
 
-@dataclass
-class _Search:
-    """Pieces still alive in the search for each row's least value, and what is known so far."""
+@dataclass(frozen=True)
+class _Pieces:
+    """Pieces still alive in the search for each row's least value: row, box, lower bound, pull along every name."""
 
     row: Ints
     low: Box
     high: Box
     bound: Floats
+    pull: Box
+
+    def take(self, keep: Bools | Ints) -> _Pieces:
+        """Some of the pieces."""
+        return _Pieces(self.row[keep], self.low[:, keep], self.high[:, keep], self.bound[keep], self.pull[:, keep])
 
 
 def _least(formula: Formula, low: Box, high: Box) -> tuple[Floats, Bools]:
@@ -136,13 +145,12 @@ def _least(formula: Formula, low: Box, high: Box) -> tuple[Floats, Bools]:
     rows = low.shape[1]
     best = np.full(rows, np.inf)  # least value seen at a point
     floor = np.full(rows, np.inf)  # least bound of pieces that were given up
-    alive = _Search(np.arange(rows), low, high, np.full(rows, -np.inf))
+    alive = _Pieces(np.arange(rows), low, high, np.full(rows, -np.inf), np.zeros_like(low))
     for _ in range(_ROUNDS):
-        alive = _look(formula, alive, best)
+        alive = _give_up(_look(formula, alive, best), floor, rows)
         if not len(alive.row):
             break
-        alive = _give_up(alive, floor, rows)
-        alive = _split(formula, alive)
+        alive = _split(alive)
     np.minimum.at(floor, alive.row, alive.bound)
     # A piece that was dropped lies above the best point seen, or within the noise of arithmetic below it.
     result = np.minimum(floor, best)
@@ -151,66 +159,50 @@ def _least(formula: Formula, low: Box, high: Box) -> tuple[Floats, Bools]:
     return np.where(none, np.nan, result), exact & ~none
 
 
-def _look(formula: Formula, alive: _Search, best: Floats) -> _Search:
+def _look(formula: Formula, alive: _Pieces, best: Floats) -> _Pieces:
     """Bound every piece, update the best points, drop the pieces that cannot matter."""
     jet = _jet(formula, alive.low, alive.high)
     rising, falling = _signs(formula, jet)
     whole = jet.defined
-    pinned_low = np.where(whole & falling, alive.high, alive.low)
-    pinned_high = np.where(whole & rising, alive.low, alive.high)
-    middle = _at(formula, np.where(np.isfinite(pinned_low + pinned_high), (pinned_low + pinned_high) / 2, pinned_low))
-    corner = _at(formula, pinned_low)
+    low = np.where(whole & falling, alive.high, alive.low)
+    high = np.where(whole & rising, alive.low, alive.high)
+    middle = _at(formula, np.where(np.isfinite(low + high), (low + high) / 2, low))
+    corner = _at(formula, low)
     for seen in (middle, corner):
         ok = np.isfinite(seen)
         np.minimum.at(best, alive.row[ok], seen[ok])
     done = whole & (rising | falling).all(axis=0) & np.isfinite(corner)
-    bound = np.where(whole, np.fmax(jet.low, _mean_value(formula, jet, alive, middle, pinned_low, pinned_high)), jet.low)
+    steepest = np.stack([np.maximum(np.abs(jet.slopes[n][0]), np.abs(jet.slopes[n][1])) for n in formula.names])
+    width = high - low
+    pull = np.where(width > 0, steepest * width, 0.0)
+    bound = np.where(whole, np.fmax(jet.low, middle - pull.sum(axis=0) / 2), jet.low)
     bound = np.maximum(bound, alive.bound)
     reach = best[alive.row]
     matters = bound < reach - _EXACT * np.maximum(1.0, np.abs(reach))
     keep = ~done & ~np.isnan(bound) & (matters | ~np.isfinite(reach))
-    return _Search(alive.row[keep], pinned_low[:, keep], pinned_high[:, keep], bound[keep])
+    pull = np.where(width > 0, np.where(np.isfinite(pull), pull, 1e300) + 1e-300, -1.0)
+    return _Pieces(alive.row, low, high, bound, pull).take(keep)
 
 
-def _mean_value(formula: Formula, jet: Jet, alive: _Search, middle: Floats, low: Box, high: Box) -> Floats:
-    """Lower bound from the value in the middle and the steepest slopes."""
-    total = middle.copy()
-    with np.errstate(all="ignore"):
-        for place, name in enumerate(formula.names):
-            half = (high[place] - low[place]) / 2
-            steepest = np.maximum(np.abs(jet.slopes[name][0]), np.abs(jet.slopes[name][1]))
-            total -= np.nan_to_num(steepest * half, nan=0.0, posinf=np.inf)
-    assert len(total) == len(alive.row)
-    return total
-
-
-def _give_up(alive: _Search, floor: Floats, rows: int) -> _Search:
+def _give_up(alive: _Pieces, floor: Floats, rows: int) -> _Pieces:
     """Keep the most promising pieces of every row; the bounds of the others stand as the row's floor."""
     if len(alive.row) <= _PIECES:
         return alive
     order = np.lexsort((alive.bound, alive.row))
     counts = np.bincount(alive.row, minlength=rows)
     rank = np.arange(len(order)) - (np.cumsum(counts) - counts)[alive.row[order]]
-    keep, leave = order[rank < _PIECES], order[rank >= _PIECES]
+    leave = order[rank >= _PIECES]
     np.minimum.at(floor, alive.row[leave], alive.bound[leave])
-    return _Search(alive.row[keep], alive.low[:, keep], alive.high[:, keep], alive.bound[keep])
+    return alive.take(order[rank < _PIECES])
 
 
-def _split(formula: Formula, alive: _Search) -> _Search:
+def _split(alive: _Pieces) -> _Pieces:
     """Halve every piece along the name that moves the value most."""
-    jet = _jet(formula, alive.low, alive.high)
-    width = alive.high - alive.low
-    with np.errstate(all="ignore"):
-        pull = np.stack([
-            np.maximum(np.abs(jet.slopes[name][0]), np.abs(jet.slopes[name][1])) * width[place]
-            for place, name in enumerate(formula.names)
-        ])
-    pull = np.where(width > 0, np.nan_to_num(pull, nan=0.0, posinf=1e300) + 1e-300, -1.0)
-    along = np.argmax(pull, axis=0)
+    along = np.argmax(alive.pull, axis=0)
     piece = np.arange(len(along))
     middle = (alive.low[along, piece] + alive.high[along, piece]) / 2
     left_high, right_low = alive.high.copy(), alive.low.copy()
     left_high[along, piece] = middle
     right_low[along, piece] = middle
-    return _Search(np.tile(alive.row, 2), np.hstack([alive.low, right_low]), np.hstack([left_high, alive.high]),
-                   np.tile(alive.bound, 2))
+    return _Pieces(np.tile(alive.row, 2), np.hstack([alive.low, right_low]), np.hstack([left_high, alive.high]),
+                   np.tile(alive.bound, 2), np.tile(alive.pull, 2))

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from functools import cache
 
 from weldbasis.formula.parse import Binary, Call, Formula, Minus, Name, Node, Number
 
 _RANK = {"+": 1, "-": 1, "*": 2, "/": 2, "**": 4}
 _SIGN = {"+": " + ", "-": " − ", "*": " × ", "/": " / ", "**": "^"}
 _MINUS_RANK, _WHOLE = 3, 9
+_MARK = "\0"  # stands before a name among the pieces
 
 
 def show(formula: Formula, figures: Mapping[str, str]) -> str:
@@ -16,37 +18,53 @@ def show(formula: Formula, figures: Mapping[str, str]) -> str:
 
     A figure that is a range, or negative, is put in brackets. A name without a figure stays a name.
     """
-    return _text(formula.root, figures)[0]
+    return "".join(piece if not is_name else _figure(figures.get(piece, piece)) for piece, is_name in _pieces(formula))
 
 
 def symbolic(formula: Formula) -> str:
     """The formula with its names, in the same print."""
-    return _text(formula.root, {})[0]
+    return show(formula, {})
 
 
-def _text(node: Node, figures: Mapping[str, str]) -> tuple[str, int]:
+def _figure(text: str) -> str:
+    return text if text.replace(".", "", 1).replace("_", "").isalnum() else f"({text})"
+
+
+@cache
+def _pieces(formula: Formula) -> tuple[tuple[str, bool], ...]:
+    """The print as fixed pieces and names, in order."""
+    text, _ = _text(formula.root)
+    return tuple((piece[1:], True) if piece.startswith(_MARK) else (piece, False) for piece in text)
+
+
+def _text(node: Node) -> tuple[list[str], int]:
     if isinstance(node, Number):
-        return node.spelling, _WHOLE
+        return [node.spelling], _WHOLE
     if isinstance(node, Name):
-        figure = figures.get(node.name, node.name)
-        plain = figure.replace(".", "", 1).replace("_", "").isalnum()
-        return (figure if plain else f"({figure})"), _WHOLE
+        return [_MARK + node.name], _WHOLE
     if isinstance(node, Minus):
-        text, rank = _text(node.part, figures)
-        return "−" + (text if rank >= _MINUS_RANK else f"({text})"), _MINUS_RANK
+        text, rank = _text(node.part)
+        return ["−", *(text if rank >= _MINUS_RANK else _bracketed(text))], _MINUS_RANK
     if isinstance(node, Call):
-        inner = ", ".join(_text(argument, figures)[0] for argument in node.arguments)
-        return f"{node.function}({inner})", _WHOLE
-    return _binary(node, figures)
+        inner: list[str] = []
+        for argument in node.arguments:
+            inner += [", "] if inner else []
+            inner += _text(argument)[0]
+        return [node.function, *_bracketed(inner)], _WHOLE
+    return _binary(node)
 
 
-def _binary(node: Binary, figures: Mapping[str, str]) -> tuple[str, int]:
+def _bracketed(text: list[str]) -> list[str]:
+    return ["(", *text, ")"]
+
+
+def _binary(node: Binary) -> tuple[list[str], int]:
     rank = _RANK[node.sign]
-    left, left_rank = _text(node.left, figures)
-    right, right_rank = _text(node.right, figures)
+    left, left_rank = _text(node.left)
+    right, right_rank = _text(node.right)
     if left_rank < rank or (node.sign == "**" and left_rank <= rank):
-        left = f"({left})"
-    tight = node.sign in ("-", "/", "**")
-    if right_rank < rank or (tight and right_rank == rank and node.sign != "**") or right_rank == _MINUS_RANK:
-        right = f"({right})"
-    return f"{left}{_SIGN[node.sign]}{right}", rank
+        left = _bracketed(left)
+    tight = node.sign in ("-", "/")
+    if right_rank < rank or (tight and right_rank == rank) or right_rank == _MINUS_RANK:
+        right = _bracketed(right)
+    return [*left, _SIGN[node.sign], *right], rank

@@ -11,7 +11,7 @@ import numpy as np
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.ranges import EVERYTHING, Range, parse_range
-from weldbasis.values import Levels, Numbers, Truth, is_there, levels_of, mask_of
+from weldbasis.values import Levels, Numbers, Truth, is_there, levels_of, mask_of, may_be_at
 from weldbasis.words import levels_text, number_text, range_text, with_unit
 
 
@@ -119,7 +119,7 @@ def failures(condition: Condition, view: View, row: int) -> tuple[str, ...]:
     """For one row, a sentence for every demand that surely or possibly fails: the limit left, and by how much."""
     found = [_failure(test, view, row) for test in condition.tests]
     if condition.any_of:
-        truth = judge(Condition(any_of=condition.any_of), view)
+        truth = view.once(("any of", id(condition)), lambda: judge(Condition(any_of=condition.any_of), view))
         if not bool(truth.surely[row]):
             parts = [" and ".join(failures(part, view, row)) or "met" for part in condition.any_of]
             found.append("none of these is surely met: " + "; or ".join(parts))
@@ -127,7 +127,7 @@ def failures(condition: Condition, view: View, row: int) -> tuple[str, ...]:
 
 
 def _failure(test: Test, view: View, row: int) -> str:
-    truth = judge_test(test, view)
+    truth = view.once(("test", id(test)), lambda: judge_test(test, view))
     if bool(truth.surely[row]):
         return ""
     quantity, column = test.quantity, view.column(test.quantity.id)
@@ -135,7 +135,7 @@ def _failure(test: Test, view: View, row: int) -> str:
     maybe = bool(truth.may[row])
     if test.there == "absent":
         return f"{title} is given" if not maybe else f"{title} may be given"
-    if not bool(is_there(column).may[row]):
+    if not may_be_at(column, row):
         return f"{title} is not known here"
     if test.there == "present":
         return f"{title} may be missing"

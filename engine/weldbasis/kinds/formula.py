@@ -21,7 +21,7 @@ from weldbasis.kinds.compiled import (
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.problem import Place, Problem, Refused
-from weldbasis.values import WIDE, Column, Truth, is_there, numbers_where
+from weldbasis.values import WIDE, Column, Truth, may_be_at, numbers_where
 from weldbasis.words import range_text
 
 
@@ -73,7 +73,7 @@ def explain_formula(compiled: Compiled, view: View, row: int) -> Explanation:
     figures = {}
     for read in compiled.reads:
         column = view.column(read.quantity.id)
-        if not bool(is_there(column).may[row]):
+        if not may_be_at(column, row):
             figures[read.name] = "none"
             continue
         there = gate(compiled, view, ())

@@ -13,7 +13,7 @@ from weldbasis.kinds.compiled import Compiled, Explanation, Kind, compile_common
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.trace import FindingLevel
-from weldbasis.values import Column, Floats, Truth, is_there
+from weldbasis.values import Column, Floats, Truth, may_be_at
 from weldbasis.words import range_text
 
 
@@ -92,7 +92,7 @@ def explain_limit(compiled: Compiled, view: View, row: int) -> Explanation:
         return Explanation()
     figures = {}
     for read in compiled.reads:
-        if read.quantity.is_number and bool(is_there(view.column(read.quantity.id)).may[row]):
+        if read.quantity.is_number and may_be_at(view.column(read.quantity.id), row):
             low, high = read_range(compiled, read, view, gate(compiled, view, ()))
             figures[read.name] = range_text(float(low[row]), float(high[row]), read.quantity.decimals)
         else:

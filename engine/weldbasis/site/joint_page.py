@@ -6,9 +6,22 @@ from dataclasses import dataclass
 
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.project import JointEntry, Project
+from weldbasis.reasons import value_text
 from weldbasis.site.pictures import Cycle, method_strip, thermal_cycle
 from weldbasis.site.render import page
 from weldbasis.trace import Candidate, Decision, JointTrace, Ref, Step
+
+
+@dataclass(frozen=True)
+class Sentence:
+    """One sentence of a chain: how deep it stands, its words, whose it is, its rule and its arithmetic."""
+
+    depth: int
+    words: str
+    who: str
+    rule: str
+    figures: str
+    given: bool
 
 
 @dataclass(frozen=True)
@@ -27,7 +40,7 @@ def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace:
     main = [d for d in shown if not knowledge.quantities[d.ref.quantity].part_of]
     return page(
         "joint.html", project=project, entry=entry, trace=trace, quantities=knowledge.quantities, rules=knowledge.rules,
-        sources=knowledge.sources, shown=shown, main=main, digest=digest,
+        shown=shown, main=main, digest=digest,
         picture=thermal_cycle(cycle_of(trace)),
         chains={d.ref.quantity: chain_lines(knowledge, trace, d) for d in main},
         methods=methods_of(knowledge, trace), strip=_strip(knowledge, trace),
@@ -43,21 +56,57 @@ def _line(knowledge: Knowledge, trace: JointTrace, depth: int, step: Step) -> Li
     return Line(depth, step, knowledge.quantities[step.ref.quantity], f"{number}{member}" if member else "")
 
 
-def chain_lines(knowledge: Knowledge, trace: JointTrace, decision: Decision) -> list[Line]:
-    """The chain of a decision with depths; parts that say the very same of another member are left to the full trace."""
+def chain_lines(knowledge: Knowledge, trace: JointTrace, decision: Decision) -> list[Sentence]:
+    """The chain of a decision with depths. What another part says in the very same words is left to the full trace,
+    and inputs of one paper that stand together make one sentence.
+    """
     depths: dict[Ref, int] = {decision.ref: 0}
-    lines: list[Line] = []
+    lines: list[Sentence] = []
     said: set[tuple[str, str]] = set()
+    inputs: list[Step] = []
     for ref in decision.chain:
         step = trace.steps[ref]
         depth = depths.setdefault(ref, 0)
         for below in [c.ref for c in step.candidates if c.governs] or step.reads:
             depths.setdefault(below, depth + 1)
-        if step.state == "input-missing" or (step.ref.quantity, step.sentence) in said:
+        if step.state == "input-missing" or (step.ref.quantity, step.sentence) in said or ref.quantity in _PLAIN:
             continue
         said.add((step.ref.quantity, step.sentence))
-        lines.append(_line(knowledge, trace, depth, step))
-    return lines
+        if step.state == "given":
+            if inputs and (inputs[0].origin != step.origin or inputs[0].ref.member != ref.member):
+                lines.append(_inputs_sentence(knowledge, trace, inputs, depths))
+                inputs = []
+            inputs.append(step)
+            continue
+        if inputs:
+            lines.append(_inputs_sentence(knowledge, trace, inputs, depths))
+            inputs = []
+        lines.append(Sentence(depth, step.sentence, _who(trace, ref), step.rule, _arithmetic(knowledge, step), False))
+    return [*lines, _inputs_sentence(knowledge, trace, inputs, depths)] if inputs else lines
+
+
+# Facts that only say which part is meant; the part is named beside every sentence anyway.
+_PLAIN = frozenset({"member_role", "member_number"})
+
+
+def _who(trace: JointTrace, ref: Ref) -> str:
+    return f"{ref.member}: {trace.members[ref.member - 1]}" if ref.member else ""
+
+
+def _arithmetic(knowledge: Knowledge, step: Step) -> str:
+    if step.state != "gave" or not step.figures or " → " in step.figures or step.value.low is None:
+        return step.figures
+    return f"{step.figures} = {value_text(knowledge.quantities[step.ref.quantity], step.value)}"
+
+
+def _inputs_sentence(knowledge: Knowledge, trace: JointTrace, inputs: list[Step], depths: dict[Ref, int]) -> Sentence:
+    parts = []
+    for step in inputs:
+        quantity = knowledge.quantities[step.ref.quantity]
+        parts.append(f"{quantity.title if not parts else quantity.title.lower()} {value_text(quantity, step.value)}")
+    origin = inputs[0].origin
+    words = ", ".join(parts) + (f" ({origin.text})." if origin else ".")
+    return Sentence(depths[inputs[0].ref], words, _who(trace, inputs[0].ref), "", "", True)
 
 
 def given_lines(knowledge: Knowledge, trace: JointTrace) -> list[Line]:
@@ -72,8 +121,9 @@ def methods_of(knowledge: Knowledge, trace: JointTrace) -> list[tuple[Quantity, 
     step = trace.steps.get(Ref("preheat_basis"))
     if step is None:
         return []
-    general = trace.steps.get(Ref("preheat_general"))
-    governing = {c.ref for s in (step, general) if s for c in s.candidates if c.governs}
+    governing = {c.ref for c in step.candidates if c.governs}
+    for chosen in [c.ref for c in step.candidates if c.governs]:
+        governing |= {c.ref for c in trace.steps[chosen].candidates if c.governs}
     found = []
     for candidate in step.candidates:
         if candidate.ref.quantity in ("preheat_contract", "preheat_general"):
