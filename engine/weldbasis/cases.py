@@ -108,9 +108,9 @@ def _compare(quantity: Quantity, expected: Any, got: Value, tolerance: float) ->
     if got.presence == "absent":
         return [f"{quantity.id}: expected {expected}, the rule gives no value"]
     if got.low is None or got.high is None:
-        wanted = tuple(expected) if isinstance(expected, list | tuple) else (expected,)
-        same = set(wanted) == set(got.any_of)
-        return [] if same else [f"{quantity.id}: expected {' or '.join(wanted)}, got {' or '.join(got.any_of)}"]
+        levels = tuple(expected) if isinstance(expected, list | tuple) else (expected,)
+        same = set(levels) == set(got.any_of)
+        return [] if same else [f"{quantity.id}: expected {' or '.join(levels)}, got {' or '.join(got.any_of)}"]
     wanted = parse_range(expected)
     slack = tolerance + _FLOAT_NOISE * max(1.0, abs(wanted.high))
     if abs(got.low - wanted.low) <= slack and abs(got.high - wanted.high) <= slack:

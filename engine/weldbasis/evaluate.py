@@ -55,8 +55,8 @@ def evaluate(
                 continue
             rule = graph.rules[name]
             view = views[rule.rule.for_each]
-            for quantity, result in KINDS[rule.rule.kind].evaluate(rule, view).items():
-                columns[quantity] = _given_first(facts.given.get(quantity), result)
+            for given, result in KINDS[rule.rule.kind].evaluate(rule, view).items():
+                columns[given] = _given_first(facts.given.get(given), result)
             if rule.rule.kind == "limit":
                 findings[name] = violated(rule, view)
     for quantity in knowledge.quantities.values():

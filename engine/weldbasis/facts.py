@@ -9,8 +9,17 @@ from typing import Literal
 from weldbasis.values import Column, Ints
 
 OriginKind = Literal[
-    "certificate", "drawing", "procedure", "grade-limit", "era-envelope", "samples",
-    "consumable", "project", "default", "assumption", "unknown",
+    "certificate",
+    "drawing",
+    "procedure",
+    "grade-limit",
+    "era-envelope",
+    "samples",
+    "consumable",
+    "project",
+    "default",
+    "assumption",
+    "unknown",
 ]
 
 

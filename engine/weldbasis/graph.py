@@ -106,6 +106,13 @@ def _refuse_cycle(graph: nx.DiGraph[Node], knowledge: Knowledge) -> None:
     loop = [edge[0] for edge in nx.find_cycle(graph)]
     path = " → ".join(f"rule {node.id}" if node.sort == "rule" else node.id for node in [*loop, loop[0]])
     rule = knowledge.rules[min(node.id for node in loop if node.sort == "rule")]
-    raise Refused([Problem(rule.place, f"the rules close a circle: {path}",
-                           "nothing in a circle can be worked out before the rest of it",
-                           "let one of these rules read something that does not depend on it")])
+    raise Refused(
+        [
+            Problem(
+                rule.place,
+                f"the rules close a circle: {path}",
+                "nothing in a circle can be worked out before the rest of it",
+                "let one of these rules read something that does not depend on it",
+            )
+        ]
+    )

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from difflib import get_close_matches
-from collections.abc import Iterable
 
 
 @dataclass(frozen=True, order=True)

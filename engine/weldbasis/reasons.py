@@ -33,7 +33,7 @@ def trace_joint(
     if narrowings is None:
         narrowings = settle(evaluation, [row])
     steps = {step.ref: step for step in _steps(evaluation, row)}
-    decisions = tuple(_decision(evaluation, quantity, steps) for quantity in evaluation.knowledge.decisions)
+    decisions = tuple(_decision(quantity, steps) for quantity in evaluation.knowledge.decisions)
     findings = tuple(findings_of(evaluation, row, narrowings))
     names = tuple(evaluation.facts.members[at] for at in _member_rows(evaluation, row))
     return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps)
@@ -160,7 +160,7 @@ def value_text(quantity: Quantity, value: Value, unit: bool = True) -> str:
     return with_unit(text, quantity.unit) if unit else text
 
 
-def _decision(evaluation: Evaluation, quantity: Quantity, steps: Mapping[Ref, Step]) -> Decision:
+def _decision(quantity: Quantity, steps: Mapping[Ref, Step]) -> Decision:
     ref = Ref(quantity.id)
     step = steps[ref]
     chain = tuple(dict.fromkeys(_chain(steps, ref, set())))
@@ -170,7 +170,7 @@ def _decision(evaluation: Evaluation, quantity: Quantity, steps: Mapping[Ref, St
 
 
 def governing_rules(steps: Mapping[Ref, Step], ref: Ref) -> tuple[str, ...]:
-    """The rules that settled a quantity: follow what governs, and single reads, down to the first real choice."""
+    """The rules that settled a quantity: down through choices, and through what only rounds or caps, to its origin."""
     found: list[str] = []
     seen: set[Ref] = set()
     queue = [ref]
@@ -179,20 +179,18 @@ def governing_rules(steps: Mapping[Ref, Step], ref: Ref) -> tuple[str, ...]:
         if step.ref in seen or step.state != "gave":
             continue
         seen.add(step.ref)
-        below = [candidate.ref for candidate in step.candidates if candidate.governs]
+        below = [candidate.ref for candidate in step.candidates if candidate.governs] or _passed_on(step, steps)
         if not below:
             found.append(step.rule)
-            if len(found) == 1 and _passes_on(step, steps):
-                found.pop()
-                below = [_passes_on(step, steps) or ref]
         queue += below
     return tuple(dict.fromkeys(found))
 
 
-def _passes_on(step: Step, steps: Mapping[Ref, Step]) -> Ref | None:
-    """The one worked-out read of a step that only rounds or caps another quantity."""
+def _passed_on(step: Step, steps: Mapping[Ref, Step]) -> list[Ref]:
+    """The one worked-out read of a step with the step's own unit: such a rule only rounds or caps it."""
     worked = [read for read in step.reads if read in steps and steps[read].state == "gave"]
-    return worked[0] if len(worked) == 1 and "round_up" in step.figures else None
+    same = len(worked) == 1 and step.value.unit and steps[worked[0]].value.unit == step.value.unit
+    return worked if same else []
 
 
 def _chain(steps: Mapping[Ref, Step], ref: Ref, seen: set[Ref]) -> Iterator[Ref]:
@@ -222,8 +220,9 @@ def findings_of(
                 level = rule.body.level if sure else rule.body.level_if_unsure
                 if level != "none":
                     text = say(evaluation, rule, Value(), at)
-                    yield Finding(level, name, text if sure else f"{text} (not sure: {_unsure(rule, evaluation, at)})",
-                                  sure)
+                    yield Finding(
+                        level, name, text if sure else f"{text} (not sure: {_unsure(rule, evaluation, at)})", sure
+                    )
     for quantity in evaluation.knowledge.decisions:
         yield from _undecided(evaluation, quantity, row, narrowings)
 
@@ -241,8 +240,11 @@ def _undecided(
     state = state_of(value, quantity)
     rule = evaluation.graph.giving.get(quantity.id, "")
     if state == "uncovered":
-        yield Finding("hold" if quantity.given == "must" else "caution", rule,
-                      f"{quantity.title}: the rules do not cover this case.")
+        yield Finding(
+            "hold" if quantity.given == "must" else "caution",
+            rule,
+            f"{quantity.title}: the rules do not cover this case.",
+        )
     if state == "open":
         text = f"{quantity.title} is open: {value_text(quantity, value)}"
         if value.presence == "maybe":

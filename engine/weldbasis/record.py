@@ -128,15 +128,18 @@ def replay(kept: bytes, fresh: Mapping[str, Any]) -> list[str]:
     if kept == canonical_bytes(fresh):
         return []
     old = json.loads(kept)
-    found = [f"{key}: the record says {old.get(key)!r}, now {fresh[key]!r}"
-             for key in ("format", "engine", "project", "inputs", "rules") if old.get(key) != fresh[key]]
+    found = [
+        f"{key}: the record says {old.get(key)!r}, now {fresh[key]!r}"
+        for key in ("format", "engine", "project", "inputs", "rules")
+        if old.get(key) != fresh[key]
+    ]
     before = {joint.get("joint"): joint for joint in old.get("joints", [])}
     after = {joint["joint"]: joint for joint in fresh["joints"]}
     found += [f"joint {name}: in the record, not in the project" for name in before if name not in after]
     found += [f"joint {name}: in the project, not in the record" for name in after if name not in before]
-    for name in after:
-        if name in before and before[name] != after[name]:
-            found += [f"joint {name}: {line}" for line in differences(before[name], after[name])]
+    for name, joint in after.items():
+        if name in before and before[name] != joint:
+            found += [f"joint {name}: {line}" for line in differences(before[name], joint)]
     return found or ["the record holds the same data in another spelling; its bytes are not canonical"]
 
 
@@ -153,9 +156,8 @@ def differences(old: Any, new: Any, path: str = "") -> Iterator[str]:
         for place, (one, other) in enumerate(zip(old, new, strict=True)):
             yield from differences(one, other, f"{path}[{place}]")
     elif old != new:
-        yield f"{path}: the record says {json.dumps(old, ensure_ascii=False)}, now {json.dumps(new, ensure_ascii=False)}"
-
-
+        before, after = (json.dumps(data, ensure_ascii=False) for data in (old, new))
+        yield f"{path}: the record says {before}, now {after}"
 
 
 def read_record(path: Path, data: bytes) -> Mapping[str, Any]:
@@ -165,12 +167,26 @@ def read_record(path: Path, data: bytes) -> Mapping[str, Any]:
         found = json.loads(data)
     except ValueError as fault:
         line, column = getattr(fault, "lineno", 1), getattr(fault, "colno", 1)
-        raise Refused([Problem(Place(str(path), line, column), "this is no JSON",
-                               "a record is one line of canonical JSON, written by decide")]) from fault
+        raise Refused(
+            [
+                Problem(
+                    Place(str(path), line, column),
+                    "this is no JSON",
+                    "a record is one line of canonical JSON, written by decide",
+                )
+            ]
+        ) from fault
     if not isinstance(found, dict) or found.get("format") != FORMAT:
         said = found.get("format") if isinstance(found, dict) else None
-        raise Refused([Problem(place, f"this is no record of format {FORMAT!r}; it says {said!r}",
-                               do="name a record.json that weldbasis decide wrote")])
+        raise Refused(
+            [
+                Problem(
+                    place,
+                    f"this is no record of format {FORMAT!r}; it says {said!r}",
+                    do="name a record.json that weldbasis decide wrote",
+                )
+            ]
+        )
     if not isinstance(found.get("joints"), list):
         raise Refused([Problem(place, "the record has no list of joints", do="restore the record as it was written")])
     return found

@@ -123,8 +123,7 @@ def _repeated(evaluation: Evaluation, trials: Sequence[_Trial]) -> Facts:
     joint_of = np.repeat(np.arange(len(trials)), sizes)
     members = np.arange(len(joint_of)) - offsets[joint_of] + starts[joint_of]
     given = {
-        name: column.take(joints if quantities[name].of == "joint" else members)
-        for name, column in facts.given.items()
+        name: column.take(joints if quantities[name].of == "joint" else members) for name, column in facts.given.items()
     }
     pins: dict[str, list[tuple[int, float | int]]] = {}
     for number, trial in enumerate(trials):
@@ -183,4 +182,3 @@ def _left(decision: Quantity, ends: Sequence[Value]) -> str:
     if widest.low is None or widest.high is None:
         return levels_text(decision, widest.any_of)
     return with_unit(range_text(widest.low, widest.high, decision.decimals), decision.unit)
-

@@ -29,7 +29,8 @@ def open_rows(column: Column, quantity: Quantity) -> Bools:
             wide = np.round(column.low, quantity.decimals) != np.round(column.high, quantity.decimals)
     else:
         wide = (column.mask & (column.mask - np.uint64(1))) != 0
-    return there & (wide | (column.presence != PRESENT))
+    still_open: Bools = there & (wide | (column.presence != PRESENT))
+    return still_open
 
 
 def demanding_end(value: Value, quantity: Quantity) -> float | str | None:

@@ -1,4 +1,4 @@
-"""Units at the edges: text with a unit into numbers of the vocabulary's unit. Inside the engine there are only floats."""
+"""Units at the edges: text with a unit into numbers of the vocabulary's unit. Inside there are only floats."""
 
 from __future__ import annotations
 
@@ -15,18 +15,56 @@ _NUMBER = r"[-+−]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?"
 _QUANTITY = re.compile(rf"({_NUMBER})\s*(.*)")
 _SPAN = re.compile(rf"({_NUMBER})\s*([^\d\s].*?)?\s*(?:to|…|\.\.\.?|–)\s*({_NUMBER})\s*(.*)")
 _SPELLINGS = {
-    "°c": "degC", "°f": "degF", "degc": "degC", "degf": "degF", "c": "degC", "f": "degF", "celsius": "degC",
-    "ml/100g": "mL/hg", "n/mm2": "N/mm**2", "n/mm²": "N/mm**2", "mpa": "MPa", "%": "percent", "wt%": "percent",
-    "wt %": "percent", "mass %": "percent", "hv": "HV", "hv10": "HV", "": "", "-": "", "inch": "in", '"': "in",
-    "v": "V", "a": "A", "hr": "h", "hours": "h", "°c/h": "delta_degC/h", "degc/h": "delta_degC/h", "k/h": "kelvin/h",
-    "°f/h": "delta_degF/h", "degf/h": "delta_degF/h", "kgf/mm2": "kgf/mm**2", "kgf/mm²": "kgf/mm**2",
-    "kgf/mm/mm": "kgf/mm**2", "n/mm/mm": "N/mm**2", "mm2/s": "mm**2/s", "mm²/s": "mm**2/s", "ft·lb": "ft*lbf",
+    "°c": "degC",
+    "°f": "degF",
+    "degc": "degC",
+    "degf": "degF",
+    "c": "degC",
+    "f": "degF",
+    "celsius": "degC",
+    "ml/100g": "mL/hg",
+    "n/mm2": "N/mm**2",
+    "n/mm²": "N/mm**2",
+    "mpa": "MPa",
+    "%": "percent",
+    "wt%": "percent",
+    "wt %": "percent",
+    "mass %": "percent",
+    "hv": "HV",
+    "hv10": "HV",
+    "": "",
+    "-": "",
+    "inch": "in",
+    '"': "in",
+    "v": "V",
+    "a": "A",
+    "hr": "h",
+    "hours": "h",
+    "°c/h": "delta_degC/h",
+    "degc/h": "delta_degC/h",
+    "k/h": "kelvin/h",
+    "°f/h": "delta_degF/h",
+    "degf/h": "delta_degF/h",
+    "kgf/mm2": "kgf/mm**2",
+    "kgf/mm²": "kgf/mm**2",
+    "kgf/mm/mm": "kgf/mm**2",
+    "n/mm/mm": "N/mm**2",
+    "mm2/s": "mm**2/s",
+    "mm²/s": "mm**2/s",
+    "ft·lb": "ft*lbf",
 }
 _KINDS = {
-    "[mass]": "a mass", "[length]": "a length", "[time]": "a time", "[temperature]": "a temperature",
-    "[current]": "a current", "[length] / [time]": "a speed", "[mass] * [length] / [time] ** 2": "an energy per length",
-    "[mass] / [length] / [time] ** 2": "a stress", "dimensionless": "a bare number",
-    "[temperature] / [time]": "a heating or cooling rate", "[length] ** 3 / [mass]": "a volume per mass",
+    "[mass]": "a mass",
+    "[length]": "a length",
+    "[time]": "a time",
+    "[temperature]": "a temperature",
+    "[current]": "a current",
+    "[length] / [time]": "a speed",
+    "[mass] * [length] / [time] ** 2": "an energy per length",
+    "[mass] / [length] / [time] ** 2": "a stress",
+    "dimensionless": "a bare number",
+    "[temperature] / [time]": "a heating or cooling rate",
+    "[length] ** 3 / [mass]": "a volume per mass",
 }
 
 

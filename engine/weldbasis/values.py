@@ -119,7 +119,8 @@ def chosen(first_where: Bools, first: Column, second: Column) -> Column:
     flags = np.where(first_where, first.flags, second.flags)
     if isinstance(first, Levels) and isinstance(second, Levels):
         return Levels(np.where(first_where, first.mask, second.mask), presence, flags)
-    assert isinstance(first, Numbers) and isinstance(second, Numbers)
+    assert isinstance(first, Numbers)
+    assert isinstance(second, Numbers)
     low = np.where(first_where, first.low, second.low)
     if is_point(first) and is_point(second):
         return Numbers(low, low, presence, flags)

@@ -58,9 +58,14 @@ def vet(knowledge: Knowledge) -> VetReport:
     for rule in graph.rules.values():
         findings += [*table_gaps(rule), *unused_rows(rule), *wrong_directions(rule), *missing_papers(rule)]
     counts = {
-        "quantities": len(knowledge.quantities), "rules": len(knowledge.rules), "sources": len(knowledge.sources),
-        "grades": len(knowledge.grades), "eras": len(knowledge.eras), "consumables": len(knowledge.consumables),
-        "cases": len(cases), "cases passed": sum(not case.faults for case in cases),
+        "quantities": len(knowledge.quantities),
+        "rules": len(knowledge.rules),
+        "sources": len(knowledge.sources),
+        "grades": len(knowledge.grades),
+        "eras": len(knowledge.eras),
+        "consumables": len(knowledge.consumables),
+        "cases": len(cases),
+        "cases passed": sum(not case.faults for case in cases),
     }
     return VetReport(tuple(sorted(findings)), cases, counts)
 
@@ -75,8 +80,13 @@ def case_findings(cases: tuple[CaseResult, ...]) -> Iterator[VetFinding]:
     """Cases that a rule does not reproduce."""
     for result in cases:
         for fault in result.faults:
-            yield VetFinding(result.case.place, "stop", "cases", f"case {result.case.id}: {fault}",
-                             f"look at rule {result.case.rule}, or at the figures of the case")
+            yield VetFinding(
+                result.case.place,
+                "stop",
+                "cases",
+                f"case {result.case.id}: {fault}",
+                f"look at rule {result.case.rule}, or at the figures of the case",
+            )
 
 
 def uncased_rules(knowledge: Knowledge) -> Iterator[VetFinding]:
@@ -84,22 +94,41 @@ def uncased_rules(knowledge: Knowledge) -> Iterator[VetFinding]:
     cased = {case.rule for case in knowledge.cases}
     for rule in knowledge.rules.values():
         if rule.id not in cased:
-            yield VetFinding(rule.place, "caution", "cases", f"rule {rule.id} has no case",
-                             "write one under cases/, from a published example or worked by hand")
+            yield VetFinding(
+                rule.place,
+                "caution",
+                "cases",
+                f"rule {rule.id} has no case",
+                "write one under cases/, from a published example or worked by hand",
+            )
 
 
 def unused_parts(knowledge: Knowledge, graph: KnowledgeGraph) -> Iterator[VetFinding]:
     """Quantities that nothing gives and no project may give, or that nothing reads and nobody shows."""
-    shown = {name for rule in graph.rules.values() if rule.rule.kind == "governing"
-             for name in rule.rule.body.get("compare", ())}
+    shown = {
+        name
+        for rule in graph.rules.values()
+        if rule.rule.kind == "governing"
+        for name in rule.rule.body.get("compare", ())
+    }
     for quantity in knowledge.quantities.values():
         node = quantity_node(quantity.id)
         if quantity.given == "never" and quantity.id not in graph.giving:
-            yield VetFinding(quantity.place, "caution", "unused", f"no rule gives {quantity.id} and no project may",
-                             "let a rule give it, write given: may, or take it out")
+            yield VetFinding(
+                quantity.place,
+                "caution",
+                "unused",
+                f"no rule gives {quantity.id} and no project may",
+                "let a rule give it, write given: may, or take it out",
+            )
         elif not graph.feeds(node) and not quantity.decision and quantity.id not in shown:
-            yield VetFinding(quantity.place, "caution", "unused", f"nothing reads {quantity.id}",
-                             "read it in a rule, show it under compare, or take it out")
+            yield VetFinding(
+                quantity.place,
+                "caution",
+                "unused",
+                f"nothing reads {quantity.id}",
+                "read it in a rule, show it under compare, or take it out",
+            )
 
 
 def table_gaps(rule: Compiled) -> Iterator[VetFinding]:
@@ -113,16 +142,24 @@ def table_gaps(rule: Compiled) -> Iterator[VetFinding]:
     if len(gaps):
         examples = "; ".join(describe_cell(rule.body.axes, tuple(int(s) for s in gap)) for gap in gaps[:_MOST_EXAMPLES])
         more = f" and {len(gaps) - _MOST_EXAMPLES} more" if len(gaps) > _MOST_EXAMPLES else ""
-        yield VetFinding(rule.rule.place_of("rows"), "caution", "gaps",
-                         f"rule {rule.rule.id}: no row covers {examples}{more}",
-                         "add a row (give: absent where the table is silent on purpose), or narrow valid_within")
+        yield VetFinding(
+            rule.rule.place_of("rows"),
+            "caution",
+            "gaps",
+            f"rule {rule.rule.id}: no row covers {examples}{more}",
+            "add a row (give: absent where the table is silent on purpose), or narrow valid_within",
+        )
 
 
 def _segments_inside(rule: Compiled, place: int) -> np.ndarray:
     axis, read = rule.body.axes[place], rule.reads[place]
     if not axis.quantity.is_number:
-        allowed = [test.mask for condition in (rule.applies, rule.valid) for test in condition.tests
-                   if test.quantity.id == axis.quantity.id and test.mask]
+        allowed = [
+            test.mask
+            for condition in (rule.applies, rule.valid)
+            for test in condition.tests
+            if test.quantity.id == axis.quantity.id and test.mask
+        ]
         bits = np.array([all(mask >> level & 1 for mask in allowed) for level in range(axis.segments)])
         return bits if len(bits) else np.ones(axis.segments, np.bool_)
     limits = [axis.quantity.range, bounds_on(rule.applies, axis.quantity.id), bounds_on(rule.valid, axis.quantity.id)]
@@ -143,8 +180,13 @@ def unused_rows(rule: Compiled) -> Iterator[VetFinding]:
         won = set(rule.body.won.reshape(-1).tolist())
         for row in range(len(rule.body.covers)):
             if row not in won:
-                yield VetFinding(rule.rule.place_of("rows", row), "caution", "gaps",
-                                 f"rule {rule.rule.id}: row {row + 1} never decides anything", "take the row out")
+                yield VetFinding(
+                    rule.rule.place_of("rows", row),
+                    "caution",
+                    "gaps",
+                    f"rule {rule.rule.id}: row {row + 1} never decides anything",
+                    "take the row out",
+                )
 
 
 def wrong_directions(rule: Compiled) -> Iterator[VetFinding]:
@@ -153,7 +195,11 @@ def wrong_directions(rule: Compiled) -> Iterator[VetFinding]:
         return
     lows, highs = {}, {}
     for read in rule.reads:
-        limits = [read.quantity.range, bounds_on(rule.applies, read.quantity.id), bounds_on(rule.valid, read.quantity.id)]
+        limits = [
+            read.quantity.range,
+            bounds_on(rule.applies, read.quantity.id),
+            bounds_on(rule.valid, read.quantity.id),
+        ]
         low, high = max(limit.low for limit in limits), min(limit.high for limit in limits)
         lows[read.name] = np.array([read.factor * low + read.offset])
         highs[read.name] = np.array([read.factor * high + read.offset])
@@ -163,16 +209,31 @@ def wrong_directions(rule: Compiled) -> Iterator[VetFinding]:
         steepest = (float(found[read.name][0][0]), float(found[read.name][1][0]))
         against = (stated == "up" and steepest[1] < 0) or (stated == "down" and steepest[0] > 0)
         if against:
-            yield VetFinding(rule.rule.place_of("direction", read.quantity.id), "stop", "direction",
-                             f"rule {rule.rule.id} says that the result goes {stated} with {read.quantity.id}, "
-                             f"but its slope is {steepest[0]:.3g} to {steepest[1]:.3g}", "turn the direction round")
+            yield VetFinding(
+                rule.rule.place_of("direction", read.quantity.id),
+                "stop",
+                "direction",
+                f"rule {rule.rule.id} says that the result goes {stated} with {read.quantity.id}, "
+                f"but its slope is {steepest[0]:.3g} to {steepest[1]:.3g}",
+                "turn the direction round",
+            )
 
 
 def missing_papers(rule: Compiled) -> Iterator[VetFinding]:
     """Rules without a source, a sentence or a history."""
     if not rule.rule.cites:
-        yield VetFinding(rule.rule.place, "stop", "sources", f"rule {rule.rule.id} cites nothing",
-                         "cite the source and clause, or common-practice with its reason")
+        yield VetFinding(
+            rule.rule.place,
+            "stop",
+            "sources",
+            f"rule {rule.rule.id} cites nothing",
+            "cite the source and clause, or common-practice with its reason",
+        )
     if not rule.rule.changes:
-        yield VetFinding(rule.rule.place, "stop", "versions", f"rule {rule.rule.id} has no changes entry",
-                         "add one for its first version")
+        yield VetFinding(
+            rule.rule.place,
+            "stop",
+            "versions",
+            f"rule {rule.rule.id} has no changes entry",
+            "add one for its first version",
+        )

@@ -10,7 +10,6 @@ from weldbasis.reasons import value_text
 from weldbasis.trace import Decision, Finding
 
 
-
 def decision_text(quantity: Quantity, decision: Decision) -> str:
     """A decision for a table cell: its value, marked where it is open or not covered."""
     if decision.state == "uncovered":

@@ -23,7 +23,9 @@ CAUTION = (
 )
 
 kb_option = click.option(
-    "--kb", type=click.Path(path_type=Path, exists=True, file_okay=False), default=None,
+    "--kb",
+    type=click.Path(path_type=Path, exists=True, file_okay=False),
+    default=None,
     help="Rule set to use: a folder with kb.yaml. Without it, the published practice that comes with weldbasis.",
 )
 json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON for a script instead of a table.")
@@ -57,8 +59,7 @@ def joint_row(project: Project, name: str) -> int:
     lowered = [known.lower() for known in names]
     if name.lower() in lowered:
         return lowered.index(name.lower())
-    raise click.BadParameter(f"project {project.id} has no joint {name!r}. {nearest(name, names)}",
-                             param_hint="JOINT")
+    raise click.BadParameter(f"project {project.id} has no joint {name!r}. {nearest(name, names)}", param_hint="JOINT")
 
 
 @contextmanager

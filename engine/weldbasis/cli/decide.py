@@ -21,8 +21,12 @@ from weldbasis.views import decision_text, finding_count_text
 
 @click.command("decide")
 @click.argument("project", type=click.Path(path_type=Path, exists=True))
-@click.option("--record", type=click.Path(path_type=Path, dir_okay=False), default=None,
-              help="Where to write the record. Without it: record.json in the project's folder.")
+@click.option(
+    "--record",
+    type=click.Path(path_type=Path, dir_okay=False),
+    default=None,
+    help="Where to write the record. Without it: record.json in the project's folder.",
+)
 @click.option("--no-record", is_flag=True, help="Print the decisions only; write nothing.")
 @kb_option
 @json_option
@@ -68,7 +72,9 @@ def decide_all(evaluation: Evaluation) -> list[JointTrace]:
 def _show(project: Project, evaluation: Evaluation, traces: list[JointTrace]) -> None:
     console = terminal()
     quantities = evaluation.knowledge.quantities
-    shown = [q for q in evaluation.knowledge.decisions if q.id in ("min_preheat", "max_interpass", "hydrogen_class", "pwht")]
+    shown = [
+        q for q in evaluation.knowledge.decisions if q.id in ("min_preheat", "max_interpass", "hydrogen_class", "pwht")
+    ]
     table = Table(title=project.title, title_justify="left", pad_edge=False, box=None, padding=(0, 1))
     table.add_column("joint", no_wrap=True)
     for quantity in shown:
@@ -80,7 +86,9 @@ def _show(project: Project, evaluation: Evaluation, traces: list[JointTrace]) ->
         table.add_row(trace.joint, *cells, finding_count_text(trace.findings))
     console.print(table)
     states = Counter(d.state for trace in traces for d in trace.decisions if not quantities[d.ref.quantity].part_of)
-    click.echo(f"{len(traces)} joints: " + ", ".join(f"{states[s]} decisions {s}" for s in ("settled", "open", "uncovered")))
+    click.echo(
+        f"{len(traces)} joints: " + ", ".join(f"{states[s]} decisions {s}" for s in ("settled", "open", "uncovered"))
+    )
     for trace in traces:
         for finding in trace.findings:
             if finding.level == "stop":
@@ -91,4 +99,5 @@ def _show(project: Project, evaluation: Evaluation, traces: list[JointTrace]) ->
 
 def _heading(name: str, title: str) -> str:
     return {"min_preheat": "preheat", "max_interpass": "interpass max", "hydrogen_class": "hydrogen"}.get(
-        name, title.lower() if len(title) < 14 else name)
+        name, title.lower() if len(title) < 14 else name
+    )

@@ -13,8 +13,14 @@ from weldbasis.site.publish import publish
 
 @click.command("publish")
 @click.argument("projects", nargs=-1, type=click.Path(path_type=Path, exists=True))
-@click.option("--to", "folder", type=click.Path(path_type=Path, file_okay=False), default=Path("published"),
-              show_default=True, help="Folder of the site. It is built beside its place first, then swapped in.")
+@click.option(
+    "--to",
+    "folder",
+    type=click.Path(path_type=Path, file_okay=False),
+    default=Path("published"),
+    show_default=True,
+    help="Folder of the site. It is built beside its place first, then swapped in.",
+)
 @kb_option
 def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
     """Publish PROJECTS as a site that opens from a folder or a USB stick, with no network.
@@ -27,8 +33,7 @@ def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
     knowledge = knowledge_from(kb)
     with progress("publishing", 100) as bar:
         task = bar.task_ids[0]
-        made = publish(chosen, folder, knowledge,
-                       lambda done, total: bar.update(task, completed=done, total=total))
+        made = publish(chosen, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total))
     home = (made.folder / "index.html").resolve()
     click.echo(f"Published {len(chosen)} projects, {made.joints} joints, {made.pages} pages.")
     click.echo(f"Open {home.as_uri()} in any browser; no network is needed.")

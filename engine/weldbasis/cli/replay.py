@@ -16,8 +16,13 @@ _MOST_LINES = 40
 
 @click.command("replay")
 @click.argument("record", type=click.Path(path_type=Path, exists=True, dir_okay=False))
-@click.option("--project", "folder", type=click.Path(path_type=Path, exists=True), default=None,
-              help="The project the record is of. Without it: the folder the record lies in.")
+@click.option(
+    "--project",
+    "folder",
+    type=click.Path(path_type=Path, exists=True),
+    default=None,
+    help="The project the record is of. Without it: the folder the record lies in.",
+)
 @kb_option
 def command(record: Path, folder: Path | None, kb: Path | None) -> None:
     """Decide the project of RECORD afresh and compare with what the record says.
@@ -29,8 +34,16 @@ def command(record: Path, folder: Path | None, kb: Path | None) -> None:
     read_record(record, kept)
     place = folder or record.resolve().parent
     if not (place / "project.yaml").exists() and place.is_dir():
-        raise Refused([Problem(Place(str(record)), f"there is no project.yaml in {place}",
-                               "a record is replayed from its project's inputs", "name the folder with --project")])
+        raise Refused(
+            [
+                Problem(
+                    Place(str(record)),
+                    f"there is no project.yaml in {place}",
+                    "a record is replayed from its project's inputs",
+                    "name the folder with --project",
+                )
+            ]
+        )
     knowledge = knowledge_from(kb)
     project = project_from(place, knowledge)
     fresh = record_of(project, evaluate(knowledge, project.facts))

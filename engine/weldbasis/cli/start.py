@@ -25,8 +25,17 @@ def command(folder: Path, title: str | None) -> None:
     project_id = re.sub(r"[^a-z0-9]+", "-", folder.resolve().name.lower()).strip("-") or "project"
     files = sorted(path for path in templates.iterdir() if path.is_file())
     if clash := [folder / path.name for path in files if (folder / path.name).exists()]:
-        raise Refused([Problem(Place(str(path)), "this file exists already", "start never overwrites a file",
-                               "choose another folder, or move the file away") for path in clash])
+        raise Refused(
+            [
+                Problem(
+                    Place(str(path)),
+                    "this file exists already",
+                    "start never overwrites a file",
+                    "choose another folder, or move the file away",
+                )
+                for path in clash
+            ]
+        )
     for path in files:
         text = path.read_text(encoding="utf-8")
         text = text.replace("@id@", project_id).replace("@title@", title or project_id.replace("-", " ").capitalize())

@@ -50,8 +50,10 @@ def _show(report: VetReport, quiet: bool) -> None:
         natures = nature_counts(tuple(result.case for result in report.cases))
         click.echo("cases by nature: " + ", ".join(f"{count} {name}" for name, count in natures.items()))
     cautions = len(report.findings) - len(report.stops)
-    click.echo(f"{places(len(report.stops), 'finding')} that {'stops' if len(report.stops) == 1 else 'stop'} work, "
-               f"{places(cautions, 'caution')}")
+    click.echo(
+        f"{places(len(report.stops), 'finding')} that {'stops' if len(report.stops) == 1 else 'stop'} work, "
+        f"{places(cautions, 'caution')}"
+    )
 
 
 def _data(report: VetReport) -> dict[str, object]:

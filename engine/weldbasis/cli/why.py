@@ -19,8 +19,13 @@ from weldbasis.views import decision_text
 @click.command("why")
 @click.argument("project", type=click.Path(path_type=Path, exists=True))
 @click.argument("joint")
-@click.option("--decision", "wanted", default=None, metavar="ID",
-              help="Only this decision, for example min_preheat. Any other quantity of the vocabulary works too.")
+@click.option(
+    "--decision",
+    "wanted",
+    default=None,
+    metavar="ID",
+    help="Only this decision, for example min_preheat. Any other quantity of the vocabulary works too.",
+)
 @click.option("--all", "everything", is_flag=True, help="Every step, also those that gave nothing.")
 @kb_option
 @json_option
@@ -36,8 +41,9 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
     evaluation = evaluate(knowledge, chosen.facts)
     trace = trace_joint(evaluation, row)
     if wanted and wanted not in knowledge.quantities:
-        raise click.BadParameter(f"no quantity {wanted!r}. {nearest(wanted, knowledge.quantities)}",
-                                 param_hint="--decision")
+        raise click.BadParameter(
+            f"no quantity {wanted!r}. {nearest(wanted, knowledge.quantities)}", param_hint="--decision"
+        )
     if as_json:
         click.echo(json.dumps(trace_data(trace), ensure_ascii=False, indent=1))
         return
@@ -92,8 +98,15 @@ def _depths(trace: JointTrace, decision: Decision) -> dict[Ref, int]:
 def _show_step(evaluation: Evaluation, step: Step, depth: int) -> None:
     console = terminal()
     indent = "  " * min(depth, 8)
-    marks = [word for word, on in (("rests on an assumption", step.value.assumed), ("unknown", step.value.unknown),
-                                   ("safe, may be wide", step.value.wide)) if on and step.state == "gave"]
+    marks = [
+        word
+        for word, on in (
+            ("rests on an assumption", step.value.assumed),
+            ("unknown", step.value.unknown),
+            ("safe, may be wide", step.value.wide),
+        )
+        if on and step.state == "gave"
+    ]
     rule = f" [dim]\\[{step.rule}][/dim]" if step.rule else ""
     tail = f" [dim]({', '.join(marks)})[/dim]" if marks else ""
     console.print(f"{indent}{_plain(step.sentence)}{rule}{tail}")

@@ -5,5 +5,16 @@ from weldbasis.formula.points import value_at
 from weldbasis.formula.sets import Ranges, range_over, slopes
 from weldbasis.formula.show import show, symbolic
 
-__all__ = ["Comparison", "Formula", "FormulaError", "Ranges", "parse_comparison", "parse_formula", "range_over", "show",
-           "slopes", "symbolic", "value_at"]
+__all__ = [
+    "Comparison",
+    "Formula",
+    "FormulaError",
+    "Ranges",
+    "parse_comparison",
+    "parse_formula",
+    "range_over",
+    "show",
+    "slopes",
+    "symbolic",
+    "value_at",
+]

@@ -132,8 +132,14 @@ def _divide(left: Jet, right: Jet) -> Jet:
     return _multiply(left, _reciprocal(right))
 
 
-def _increasing(part: Jet, at: Callable[[Floats], Floats], slope: Callable[[Floats], Floats], rising: bool,
-                least: float = -np.inf, open_end: bool = False) -> Jet:
+def _increasing(
+    part: Jet,
+    at: Callable[[Floats], Floats],
+    slope: Callable[[Floats], Floats],
+    rising: bool,
+    least: float = -np.inf,
+    open_end: bool = False,
+) -> Jet:
     """A rising function whose own slope rises or falls; values below `least` are outside its domain."""
     inside = part.low > least if open_end else part.low >= least
     none = part.high <= least if open_end else part.high < least
@@ -225,7 +231,11 @@ def _power_range(base: Jet, n: float) -> tuple[Floats, Floats, Bools]:
 
 
 _BINARY: Mapping[str, Callable[[Jet, Jet], Jet]] = {
-    "+": _add, "-": _subtract, "*": _multiply, "/": _divide, "**": _power,
+    "+": _add,
+    "-": _subtract,
+    "*": _multiply,
+    "/": _divide,
+    "**": _power,
 }
 _FUNCTION: Mapping[str, Callable[[Jet], Jet]] = {
     "exp": lambda part: _increasing(part, np.exp, np.exp, True),
@@ -236,4 +246,3 @@ _FUNCTION: Mapping[str, Callable[[Jet], Jet]] = {
     "atan": lambda part: _bell(part, np.arctan, lambda x: 1 / (1 + x * x)),
     "abs": _absolute,
 }
-

@@ -16,8 +16,16 @@ from weldbasis.problem import nearest
 
 # Name and number of arguments: (least, most), most 0 for any number.
 FUNCTIONS: Mapping[str, tuple[int, int]] = {
-    "sqrt": (1, 1), "exp": (1, 1), "log": (1, 1), "log10": (1, 1), "tanh": (1, 1), "atan": (1, 1), "abs": (1, 1),
-    "min": (2, 0), "max": (2, 0), "round_up": (2, 2),
+    "sqrt": (1, 1),
+    "exp": (1, 1),
+    "log": (1, 1),
+    "log10": (1, 1),
+    "tanh": (1, 1),
+    "atan": (1, 1),
+    "abs": (1, 1),
+    "min": (2, 0),
+    "max": (2, 0),
+    "round_up": (2, 2),
 }
 _SIGNS: Mapping[type[ast.operator], str] = {ast.Add: "+", ast.Sub: "-", ast.Mult: "*", ast.Div: "/", ast.Pow: "**"}
 _LONGEST, _DEEPEST = 2000, 60
@@ -137,8 +145,9 @@ def _python_tree(text: str) -> ast.expr:
     try:
         return ast.parse(flat.strip() or "?", mode="eval").body
     except SyntaxError as fault:
-        raise FormulaError("this is no formula: a sign, a bracket or a name is missing or too many",
-                           max(fault.offset or 1, 1)) from fault
+        raise FormulaError(
+            "this is no formula: a sign, a bracket or a name is missing or too many", max(fault.offset or 1, 1)
+        ) from fault
     except (ValueError, RecursionError, MemoryError) as fault:
         raise FormulaError("this formula nests too deeply to be read", 1) from fault
 
@@ -160,8 +169,9 @@ def _node(tree: ast.expr, text: str, depth: int) -> Node:
         return Binary(_SIGNS[type(tree.op)], _node(tree.left, text, depth + 1), _node(tree.right, text, depth + 1))
     if isinstance(tree, ast.Call):
         return _call(tree, text, depth, column)
-    raise FormulaError(f"{_what(tree)} cannot stand in a formula; it holds numbers, names, + - * / ** and functions",
-                       column)
+    raise FormulaError(
+        f"{_what(tree)} cannot stand in a formula; it holds numbers, names, + - * / ** and functions", column
+    )
 
 
 def _number(tree: ast.Constant, text: str, column: int) -> Number:
@@ -191,9 +201,20 @@ def _call(tree: ast.Call, text: str, depth: int, column: int) -> Call:
 
 def _what(tree: ast.expr) -> str:
     words: Mapping[type[ast.expr], str] = {
-        ast.Compare: "a comparison", ast.BoolOp: "'and' or 'or'", ast.Attribute: "a dot", ast.Subscript: "a square bracket",
-        ast.Lambda: "a lambda", ast.IfExp: "an 'if'", ast.List: "a list", ast.Tuple: "a comma outside a function",
-        ast.Dict: "a dictionary", ast.Set: "a set", ast.JoinedStr: "a text", ast.Starred: "a star",
-        ast.NamedExpr: "an assignment", ast.BinOp: "this sign", ast.UnaryOp: "this sign",
+        ast.Compare: "a comparison",
+        ast.BoolOp: "'and' or 'or'",
+        ast.Attribute: "a dot",
+        ast.Subscript: "a square bracket",
+        ast.Lambda: "a lambda",
+        ast.IfExp: "an 'if'",
+        ast.List: "a list",
+        ast.Tuple: "a comma outside a function",
+        ast.Dict: "a dictionary",
+        ast.Set: "a set",
+        ast.JoinedStr: "a text",
+        ast.Starred: "a star",
+        ast.NamedExpr: "an assignment",
+        ast.BinOp: "this sign",
+        ast.UnaryOp: "this sign",
     }
     return words.get(type(tree), "this")

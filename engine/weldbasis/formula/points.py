@@ -49,11 +49,21 @@ def power(base: Floats, exponent: Floats) -> Floats:
 
 
 FUNCTION_AT: Mapping[str, Callable[..., Floats]] = {
-    "sqrt": np.sqrt, "exp": np.exp, "log": np.log, "log10": np.log10, "tanh": np.tanh, "atan": np.arctan,
-    "abs": np.abs, "round_up": round_up,
+    "sqrt": np.sqrt,
+    "exp": np.exp,
+    "log": np.log,
+    "log10": np.log10,
+    "tanh": np.tanh,
+    "atan": np.arctan,
+    "abs": np.abs,
+    "round_up": round_up,
 }
 BINARY_AT: Mapping[str, Callable[[Floats, Floats], Floats]] = {
-    "+": np.add, "-": np.subtract, "*": np.multiply, "/": np.divide, "**": power,
+    "+": np.add,
+    "-": np.subtract,
+    "*": np.multiply,
+    "/": np.divide,
+    "**": power,
 }
 
 
@@ -65,7 +75,7 @@ def _compiled(formula: Formula) -> Program:
 def _program(node: Node) -> Program:
     if isinstance(node, Number):
         constant = np.float64(node.value)
-        return lambda values: constant  # type: ignore[return-value]  # a scalar stands for a constant column
+        return lambda _: constant  # type: ignore[return-value]  # a scalar stands for a constant column
     if isinstance(node, Name):
         name = node.name
         return lambda values: values[name]

@@ -30,7 +30,7 @@ _CHUNK = 20_000  # rows worked at once, to bound memory
 
 @dataclass(frozen=True)
 class Ranges:
-    """Hull for every row. `exact`: proved to be the hull itself; `defined`: the formula has a value all over the box."""
+    """Hull for every row. `exact`: proved to be the hull; `defined`: the formula has a value all over the box."""
 
     low: Floats
     high: Floats
@@ -204,5 +204,10 @@ def _split(alive: _Pieces) -> _Pieces:
     left_high, right_low = alive.high.copy(), alive.low.copy()
     left_high[along, piece] = middle
     right_low[along, piece] = middle
-    return _Pieces(np.tile(alive.row, 2), np.hstack([alive.low, right_low]), np.hstack([left_high, alive.high]),
-                   np.tile(alive.bound, 2), np.tile(alive.pull, 2))
+    return _Pieces(
+        np.tile(alive.row, 2),
+        np.hstack([alive.low, right_low]),
+        np.hstack([left_high, alive.high]),
+        np.tile(alive.bound, 2),
+        np.tile(alive.pull, 2),
+    )

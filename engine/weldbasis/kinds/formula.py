@@ -32,15 +32,30 @@ def compile_formula(rule: Rule, knowledge: Knowledge) -> Compiled:
         formula = parse_formula(text)
     except FormulaError as fault:
         place = rule.place_of("formula")
-        raise Refused([Problem(Place(place.file, place.line, place.column), f"formula of rule {rule.id}: {fault}",
-                               f"at character {fault.column} of {text!r}")]) from fault
+        raise Refused(
+            [
+                Problem(
+                    Place(place.file, place.line, place.column),
+                    f"formula of rule {rule.id}: {fault}",
+                    f"at character {fault.column} of {text!r}",
+                )
+            ]
+        ) from fault
     bound = {read.name for read in rule.reads}
     if missing := [name for name in formula.names if name not in bound]:
-        raise refuse(rule, f"the formula names {missing[0]!r}, which reads does not bind", "formula",
-                     do=f"add '{missing[0]}: <quantity>' to reads")
+        raise refuse(
+            rule,
+            f"the formula names {missing[0]!r}, which reads does not bind",
+            "formula",
+            do=f"add '{missing[0]}: <quantity>' to reads",
+        )
     if unused := [read.name for read in rule.reads if read.name not in formula.names]:
-        raise refuse(rule, f"reads binds {unused[0]!r}, which the formula does not use", "reads",
-                     do="take it out of reads, or use it in the formula")
+        raise refuse(
+            rule,
+            f"reads binds {unused[0]!r}, which the formula does not use",
+            "reads",
+            do="take it out of reads, or use it in the formula",
+        )
     compiled = compile_common(rule, knowledge, formula)
     if levels := [read.name for read in compiled.reads if not read.quantity.is_number]:
         raise refuse(rule, f"{levels[0]!r} is a level, and a formula reckons with numbers only", "reads")
@@ -80,8 +95,6 @@ def explain_formula(compiled: Compiled, view: View, row: int) -> Explanation:
         low, high = read_range(compiled, read, view, there)
         figures[read.name] = range_text(float(low[row]), float(high[row]), read.quantity.decimals)
     return Explanation(show(compiled.body, figures))
-
-
 
 
 FORMULA = Kind("formula", compile_formula, evaluate_formula, explain_formula)

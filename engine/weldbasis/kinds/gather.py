@@ -107,8 +107,9 @@ def _may_be_thickest(body: Gather, members: View, wanted: Truth) -> Truth:
 def _join_numbers(body: Gather, column: Numbers, counts: Truth, members: View) -> tuple[Floats, Floats]:
     starts = members.starts
     if body.take == "sum":
-        low = np.add.reduceat(np.where(counts.surely, column.low, np.where(counts.may, np.minimum(column.low, 0), 0)),
-                              starts)
+        low = np.add.reduceat(
+            np.where(counts.surely, column.low, np.where(counts.may, np.minimum(column.low, 0), 0)), starts
+        )
         if is_point(column) and bool((counts.may == counts.surely).all()):
             return low, low
         return low, np.add.reduceat(np.where(counts.may, np.maximum(column.high, 0), 0), starts)

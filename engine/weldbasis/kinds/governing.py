@@ -60,8 +60,13 @@ def compile_governing(rule: Rule, knowledge: Knowledge) -> Compiled:
     given = knowledge.quantities[rule.gives[0]]
     for place, choice in enumerate(choices):
         if choice.quantity.order != given.order or choice.quantity.unit != given.unit:
-            raise refuse(rule, f"candidate {choice.quantity.id} has another unit or other levels than {given.id}",
-                         "candidates", place, do="give both the same unit, or the same order of levels")
+            raise refuse(
+                rule,
+                f"candidate {choice.quantity.id} has another unit or other levels than {given.id}",
+                "candidates",
+                place,
+                do="give both the same unit, or the same order of levels",
+            )
     compare = tuple(knowledge.quantities[name] for name in rule.body.get("compare", ()))
     take, reverse = _direction(rule, given)
     inputs = [choice.quantity.id for choice in choices]
@@ -75,8 +80,12 @@ def _direction(rule: Rule, given: Quantity) -> tuple[str, bool]:
     if take != "most-demanding":
         return take, False
     if given.worse == "neither":
-        raise refuse(rule, f"{given.id} does not say which end is more demanding", "take",
-                     do=f"write worse: in the vocabulary entry of {given.id}, or take highest, lowest or first")
+        raise refuse(
+            rule,
+            f"{given.id} does not say which end is more demanding",
+            "take",
+            do=f"write worse: in the vocabulary entry of {given.id}, or take highest, lowest or first",
+        )
     if given.is_number:
         return ("highest" if given.worse == "higher" else "lowest"), False
     return "highest", given.worse == "first"
@@ -162,9 +171,7 @@ def _first_number(standing: Sequence[tuple[Numbers, Truth]], allowed: Truth) -> 
     return numbers_where(there, low, high, flags)
 
 
-def govern_levels(
-    body: Governing, standing: Sequence[tuple[Levels, Truth]], allowed: Truth, count: int
-) -> Levels:
+def govern_levels(body: Governing, standing: Sequence[tuple[Levels, Truth]], allowed: Truth, count: int) -> Levels:
     """The worst (by order) or the first of level columns, exact on sets."""
     rows = len(standing[0][0])
     flags: Bytes = np.zeros(rows, np.uint8)
@@ -221,12 +228,23 @@ def explain_governing(compiled: Compiled, view: View, row: int) -> Explanation:
         if body.take == "first":
             settled = settled or bool(there.surely[row])
         remark = "" if may else ("gives no value here" if value.presence == "absent" else "does not stand for choice")
-        candidates.append(Candidate(Ref(choice.quantity.id, member), value, governs, may,
-                                    _behind(body, value, result) if may else None, remark))
+        candidates.append(
+            Candidate(
+                Ref(choice.quantity.id, member),
+                value,
+                governs,
+                may,
+                _behind(body, value, result) if may else None,
+                remark,
+            )
+        )
     for quantity in body.compare:
         value = value_of(view.column(quantity.id), quantity, row)
-        candidates.append(Candidate(Ref(quantity.id, member), value, False, False, _behind(body, value, result),
-                                    "shown for comparison"))
+        candidates.append(
+            Candidate(
+                Ref(quantity.id, member), value, False, False, _behind(body, value, result), "shown for comparison"
+            )
+        )
     return Explanation("", tuple(candidates))
 
 

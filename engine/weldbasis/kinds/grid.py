@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -43,7 +44,7 @@ class Axis:
         if not len(self.cuts):
             return [0.0]
         cuts = [float(cut) for cut in self.cuts]
-        between = [(low + high) / 2 for low, high in zip(cuts, cuts[1:], strict=False)]
+        between = [(low + high) / 2 for low, high in pairwise(cuts)]
         found = [cuts[0] - 1.0]
         for place, cut in enumerate(cuts):
             found += [cut, between[place] if place < len(between) else cut + 1.0]
@@ -66,13 +67,15 @@ class Axis:
             return np.zeros(len(points), np.intp)
         left = np.searchsorted(self.cuts, points, side="left")
         on_cut = self.cuts[np.minimum(left, len(self.cuts) - 1)] == points
-        return (2 * left + on_cut).astype(np.intp)
+        segments: Ints = (2 * left + on_cut).astype(np.intp)
+        return segments
 
     def touched(self, column: Column, low: Floats | None, high: Floats | None) -> tuple[Ints, Ints] | Bools:
         """First and last segment that each set touches, or, for levels, which ones it touches."""
         if isinstance(column, Levels):
             places = np.arange(self.segments, dtype=np.uint64)
-            return (column.mask[:, None] >> places[None, :] & np.uint64(1)).astype(np.bool_)
+            bits: Bools = (column.mask[:, None] >> places[None, :] & np.uint64(1)).astype(np.bool_)
+            return bits
         assert low is not None
         assert high is not None
         first = self.segment_of(low)
@@ -128,9 +131,7 @@ def cell_sets(axes: Sequence[Axis], touched: Sequence[tuple[Ints, Ints] | Bools]
     return cells
 
 
-def single_cells(
-    axes: Sequence[Axis], touched: Sequence[tuple[Ints, Ints] | Bools], rows: int
-) -> tuple[Ints, Bools]:
+def single_cells(axes: Sequence[Axis], touched: Sequence[tuple[Ints, Ints] | Bools], rows: int) -> tuple[Ints, Bools]:
     """The flat cell of each row of facts, and whether its box touches that one cell only."""
     flat, single = np.zeros(rows, np.intp), np.ones(rows, np.bool_)
     for axis, part in zip(axes, touched, strict=True):
@@ -143,4 +144,3 @@ def single_cells(
             single &= part.sum(axis=1) == 1
         flat = flat * axis.segments + place
     return flat, single
-

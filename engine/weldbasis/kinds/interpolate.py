@@ -41,20 +41,24 @@ def compile_surface(compiled: Compiled) -> Surface:
     rule = compiled.rule
     numbers = [read for read in compiled.reads if read.quantity.is_number]
     if len(numbers) != 1:
-        raise refuse(rule, f"an interpolated table reads one number, this one {len(numbers)}", "reads",
-                     do="make the other columns levels, or split the table")
+        raise refuse(
+            rule,
+            f"an interpolated table reads one number, this one {len(numbers)}",
+            "reads",
+            do="make the other columns levels, or split the table",
+        )
     along, beside = numbers[0], tuple(read for read in compiled.reads if not read.quantity.is_number)
     nodes: dict[tuple[int, ...], list[tuple[float, float]]] = {}
     for place, row in enumerate(rule.body["rows"]):
         try:
-            at = parse_range(row["when"][along.name])
+            place_at = parse_range(row["when"][along.name])
             given = parse_range(row["give"])
             key = tuple(compile_test(r.quantity, row["when"].get(r.name, list(r.quantity.order))).mask for r in beside)
         except (ValueError, KeyError) as fault:
             raise refuse(rule, f"row {place + 1}: {fault}", "rows", place) from fault
-        if at.low != at.high or given.low != given.high:
+        if place_at.low != place_at.high or given.low != given.high:
             raise refuse(rule, f"row {place + 1} needs single numbers to interpolate between", "rows", place)
-        nodes.setdefault(key, []).append((at.low, given.low))
+        nodes.setdefault(key, []).append((place_at.low, given.low))
     curves = []
     for key, points in sorted(nodes.items()):
         points.sort()
@@ -66,7 +70,9 @@ def compile_surface(compiled: Compiled) -> Surface:
     return Surface(along, beside, tuple(curves))
 
 
-def evaluate_surface(compiled: Compiled, surface: Surface, view: View, there: Truth, flags: Bytes) -> Mapping[str, Column]:
+def evaluate_surface(
+    compiled: Compiled, surface: Surface, view: View, there: Truth, flags: Bytes
+) -> Mapping[str, Column]:
     """The hull over the curves that may hold; absent beyond the outer nodes, which are never extended."""
     low, high = read_range(compiled, surface.along, view, there)
     least, most = np.full(view.rows, np.inf), np.full(view.rows, -np.inf)
@@ -106,11 +112,10 @@ def curve_range(curve: Curve, low: Floats, high: Floats) -> tuple[Floats, Floats
     return least, most, inside
 
 
-def explain_surface(compiled: Compiled, surface: Surface) -> Explanation:
+def explain_surface(surface: Surface) -> Explanation:
     """The nodes in words."""
     parts = []
     for curve in surface.curves:
         nodes = ", ".join(f"{at:g} → {value:g}" for at, value in zip(curve.at, curve.value, strict=True))
         parts.append(nodes)
     return Explanation(f"between nodes of {surface.along.name}: " + "; ".join(parts))
-

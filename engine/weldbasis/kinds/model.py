@@ -42,13 +42,16 @@ def compile_model(rule: Rule, knowledge: Knowledge) -> Compiled:
         raise refuse(rule, f"there is no model {name!r}", "model", do=nearest(name, MODELS))
     model = MODELS[name]
     constants = {key: float(value) for key, value in rule.body.get("constants", {}).items()}
-    for part, wanted, have in (("constants", set(model.constants), set(constants)),
-                               ("reads", set(model.arguments), {read.name for read in rule.reads})):
+    for part, wanted, have in (
+        ("constants", set(model.constants), set(constants)),
+        ("reads", set(model.arguments), {read.name for read in rule.reads}),
+    ):
         if missing := sorted(wanted - have):
             raise refuse(rule, f"model {name} needs {missing[0]} among its {part}", part)
         if extra := sorted(have - wanted):
-            raise refuse(rule, f"model {name} has no {extra[0]} among its {part}", part, extra[0],
-                         do=nearest(extra[0], wanted))
+            raise refuse(
+                rule, f"model {name} has no {extra[0]} among its {part}", part, extra[0], do=nearest(extra[0], wanted)
+            )
     compiled = compile_common(rule, knowledge, Physical(model, constants))
     for read in compiled.reads:
         _same_unit(rule, read.name, _read_unit(rule, read.name, read.quantity.unit), model.arguments[read.name].unit)
@@ -62,8 +65,13 @@ def _read_unit(rule: Rule, name: str, vocabulary_unit: str) -> str:
 
 def _same_unit(rule: Rule, name: str, have: str, wanted: str) -> None:
     if have != wanted and conversion(have, wanted) != (1.0, 0.0):
-        raise refuse(rule, f"the model takes {name} in {wanted!r}, the rule hands it over in {have!r}", "reads", name,
-                     do=f"write {name}: {{quantity: …, unit: {wanted}}}")
+        raise refuse(
+            rule,
+            f"the model takes {name} in {wanted!r}, the rule hands it over in {have!r}",
+            "reads",
+            name,
+            do=f"write {name}: {{quantity: …, unit: {wanted}}}",
+        )
 
 
 def evaluate_model(compiled: Compiled, view: View) -> Mapping[str, Column]:

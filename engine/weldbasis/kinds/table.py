@@ -1,4 +1,4 @@
-"""Kind `table`: rows of ranges and levels, read as the one matching row, the most demanding of several, or interpolated."""
+"""Kind `table`: rows of ranges and levels; the one matching row, the most demanding of several, or interpolated."""
 
 from __future__ import annotations
 
@@ -36,7 +36,7 @@ from weldbasis.kinds.interpolate import Surface, compile_surface, evaluate_surfa
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Quantity, Rule
 from weldbasis.ranges import EVERYTHING, Range, parse_range
-from weldbasis.values import Bools, Column, Ints, Levels, Truth, levels_where, mask_of, numbers_where
+from weldbasis.values import Bools, Column, Ints, Truth, levels_where, mask_of, numbers_where
 
 _BLOCK = 2_000_000  # cells × rows looked at in one go, to bound memory
 
@@ -82,8 +82,17 @@ def compile_table(rule: Rule, knowledge: Knowledge) -> Compiled:
 
 
 def _with_body(compiled: Compiled, body: Table) -> Compiled:
-    return Compiled(compiled.rule, compiled.applies, compiled.valid, compiled.reads, compiled.gives, body,
-                    compiled.body_quantities, compiled.gives_factor, compiled.gives_offset)
+    return Compiled(
+        compiled.rule,
+        compiled.applies,
+        compiled.valid,
+        compiled.reads,
+        compiled.gives,
+        body,
+        compiled.body_quantities,
+        compiled.gives_factor,
+        compiled.gives_offset,
+    )
 
 
 def _row_tests(compiled: Compiled, place: int, when: Mapping[str, Any]) -> dict[str, Test]:
@@ -91,15 +100,28 @@ def _row_tests(compiled: Compiled, place: int, when: Mapping[str, Any]) -> dict[
     found = {}
     for name, wanted in when.items():
         if name not in by_name:
-            raise refuse(compiled.rule, f"row {place + 1} looks at {name!r}, which reads does not bind", "rows", place,
-                         "when", do=f"add {name} to reads")
+            raise refuse(
+                compiled.rule,
+                f"row {place + 1} looks at {name!r}, which reads does not bind",
+                "rows",
+                place,
+                "when",
+                do=f"add {name} to reads",
+            )
         try:
             found[name] = compile_test(by_name[name], wanted)
         except ValueError as fault:
             raise refuse(compiled.rule, f"row {place + 1}, {name}: {fault}", "rows", place, "when", name) from fault
         if found[name].there:
-            raise refuse(compiled.rule, f"row {place + 1}, {name}: a table row needs a value", "rows", place, "when",
-                         name, do="move 'present' or 'absent' to applies_when")
+            raise refuse(
+                compiled.rule,
+                f"row {place + 1}, {name}: a table row needs a value",
+                "rows",
+                place,
+                "when",
+                name,
+                do="move 'present' or 'absent' to applies_when",
+            )
     return found
 
 
@@ -154,8 +176,13 @@ def _refuse_overlap(compiled: Compiled, axes: Sequence[Axis], covers: Sequence[S
         return
     first, second, cell = found[0]
     example = describe_cell(axes, cell)
-    raise refuse(compiled.rule, f"rows {first + 1} and {second + 1} both match where {example}", "rows", second,
-                 do="part them, or read the table as most-demanding-row")
+    raise refuse(
+        compiled.rule,
+        f"rows {first + 1} and {second + 1} both match where {example}",
+        "rows",
+        second,
+        do="part them, or read the table as most-demanding-row",
+    )
 
 
 def describe_cell(axes: Sequence[Axis], cell: Sequence[int]) -> str:
@@ -212,8 +239,13 @@ def _wide_cells(table: Table, touched: Sequence[Any], wide: Ints) -> NDArray[np.
 
 
 def _read_cells(
-    quantity: Quantity, cells: Cells, row_of: NDArray[np.int32], wide: Ints, spread: NDArray[np.bool_],
-    there: Truth, flags: NDArray[np.uint8],
+    quantity: Quantity,
+    cells: Cells,
+    row_of: NDArray[np.int32],
+    wide: Ints,
+    spread: NDArray[np.bool_],
+    there: Truth,
+    flags: NDArray[np.uint8],
 ) -> Column:
     gives = np.append(cells.there, False)
     may, surely = gives[row_of].copy(), gives[row_of].copy()
@@ -240,7 +272,7 @@ def explain_table(compiled: Compiled, view: View, row: int) -> Explanation:
     """The rows that the facts touch, by number and in words."""
     table: Table = compiled.body
     if table.surface is not None:
-        return explain_surface(compiled, table.surface)
+        return explain_surface(table.surface)
     there = gate(compiled, view, tuple(read.quantity.id for read in compiled.reads))
     if not bool(there.may[row]):
         return Explanation()

@@ -5,6 +5,7 @@ from __future__ import annotations
 import dataclasses
 import hashlib
 from collections.abc import Iterator
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -77,8 +78,7 @@ def load_knowledge(folder: Path) -> Knowledge:
     head = _head(reading, folder / "kb.yaml")
     for document in reading.documents("quantities"):
         topic = Path(document.file).stem
-        _list(reading, document, "quantities", "quantities",
-              lambda data, doc, path, topic=topic: quantity_from(data, doc, path, topic))
+        _list(reading, document, "quantities", "quantities", partial(quantity_from, topic=topic))
     for document in reading.documents("rules"):
         _rules(reading, document, head.get("layers", ["published"])[-1])
     for document in reading.documents("sources"):
@@ -111,8 +111,16 @@ def _shown(path: Path) -> str:
 
 def _head(reading: _Reading, path: Path) -> dict[str, Any]:
     if not path.exists():
-        raise Refused([Problem(Place(str(path)), "there is no such file", "a folder of knowledge starts with kb.yaml",
-                               "name a folder that holds one")])
+        raise Refused(
+            [
+                Problem(
+                    Place(str(path)),
+                    "there is no such file",
+                    "a folder of knowledge starts with kb.yaml",
+                    "name a folder that holds one",
+                )
+            ]
+        )
     document = read_yaml(path, _shown(path))
     return document.data if reading.fits(document, "kb") else {}
 
@@ -128,28 +136,47 @@ def _rules(reading: _Reading, document: Document, layer: str) -> None:
     data = document.data
     family = "rules" in data and "id" not in data
     if family and (extra := sorted(set(data) - {"rules"})):
-        reading.problems.append(document.problem((extra[0],), f"{extra[0]!r} cannot stand beside rules",
-                                                 do="a family of rules holds only the list rules"))
+        reading.problems.append(
+            document.problem(
+                (extra[0],), f"{extra[0]!r} cannot stand beside rules", do="a family of rules holds only the list rules"
+            )
+        )
     paths: list[Path_] = [("rules", place) for place in range(len(data["rules"]))] if family else [()]
     topic = Path(document.file).parent.name
     for path in paths:
         part = data["rules"][path[1]] if path else data
         kind = part.get("kind") if isinstance(part, dict) else None
         if kind not in RULE_KINDS:
-            reading.problems.append(document.problem((*path, "kind"), f"{kind!r} is no kind of rule",
-                                                     do=nearest(str(kind), RULE_KINDS)))
+            reading.problems.append(
+                document.problem((*path, "kind"), f"{kind!r} is no kind of rule", do=nearest(str(kind), RULE_KINDS))
+            )
         elif reading.fits(document, f"rule-{kind}", path):
-            reading.add("rules", lambda d, doc, p: rule_from(d, doc, p, topic, layer), document, path)
+            reading.add("rules", partial(rule_from, topic=topic, layer=layer), document, path)
     if not family and isinstance(data.get("id"), str) and Path(document.file).stem != data["id"]:
-        reading.problems.append(document.problem(("id",), f"the file is called {Path(document.file).name}, its rule {data['id']}",
-                                                 "a rule is found by its file's name", f"call the file {data['id']}.yaml"))
+        reading.problems.append(
+            document.problem(
+                ("id",),
+                f"the file is called {Path(document.file).name}, its rule {data['id']}",
+                "a rule is found by its file's name",
+                f"call the file {data['id']}.yaml",
+            )
+        )
 
 
 def _assembled(head: dict[str, Any], found: dict[str, dict[str, Any]]) -> Knowledge:
     ordered = {kind: dict(sorted(records.items())) for kind, records in found.items()}
-    cases = tuple(ordered.pop("cases").values())
-    knowledge = Knowledge(title=head["title"], custodian=head["custodian"], release=str(head["release"]), cases=cases,
-                          **ordered)
+    knowledge = Knowledge(
+        head["title"],
+        head["custodian"],
+        str(head["release"]),
+        ordered["quantities"],
+        ordered["rules"],
+        ordered["sources"],
+        ordered["grades"],
+        ordered["eras"],
+        ordered["consumables"],
+        tuple(ordered["cases"].values()),
+    )
     return dataclasses.replace(knowledge, digest=digest_of_meaning(knowledge))
 
 
@@ -174,5 +201,3 @@ def meaning_of(record: Any) -> Any:
     if isinstance(record, float) and record in (float("inf"), float("-inf")):
         return str(record)
     return record
-
-

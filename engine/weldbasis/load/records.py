@@ -20,13 +20,27 @@ from weldbasis.knowledge import (
     Source,
 )
 from weldbasis.load.yaml_text import Document, Path_
-from weldbasis.problem import Place
 from weldbasis.ranges import Range, parse_range
 
-_RULE_PARTS = frozenset({
-    "id", "version", "title", "kind", "for_each", "gives", "gives_unit", "reads", "applies_when", "valid_within",
-    "direction", "say", "cites", "note", "changes",
-})
+_RULE_PARTS = frozenset(
+    {
+        "id",
+        "version",
+        "title",
+        "kind",
+        "for_each",
+        "gives",
+        "gives_unit",
+        "reads",
+        "applies_when",
+        "valid_within",
+        "direction",
+        "say",
+        "cites",
+        "note",
+        "changes",
+    }
+)
 
 
 class BadRange(ValueError):
@@ -51,14 +65,23 @@ def quantity_from(data: Mapping[str, Any], document: Document, path: Path_, topi
     titles = levels.get("titles", {})
     about = number or levels
     return Quantity(
-        id=data["id"], title=data["title"], of=data["of"], says=data["says"], symbol=data.get("symbol", ""),
+        id=data["id"],
+        title=data["title"],
+        of=data["of"],
+        says=data["says"],
+        symbol=data.get("symbol", ""),
         unit=number.get("unit", ""),
         range=range_at(number["range"], (*path, "number", "range")) if number else Range(0.0, 0.0),
         decimals=number.get("decimals", 0),
         levels=tuple(Level(name, titles.get(name, name.replace("-", " "))) for name in levels.get("order", ())),
-        worse=about.get("worse", "neither"), given=data.get("given", "never"),
-        if_not_given=data.get("if_not_given", "absent"), if_not_given_because=data.get("because", ""),
-        decision=data.get("decision", 0), part_of=data.get("part_of", ""), topic=topic, place=document.place(*path, "id"),
+        worse=about.get("worse", "neither"),
+        given=data.get("given", "never"),
+        if_not_given=data.get("if_not_given", "absent"),
+        if_not_given_because=data.get("because", ""),
+        decision=data.get("decision", 0),
+        part_of=data.get("part_of", ""),
+        topic=topic,
+        place=document.place(*path, "id"),
     )
 
 
@@ -71,17 +94,28 @@ def cites_from(data: Mapping[str, Any], default: tuple[Cite, ...] = ()) -> tuple
 def rule_from(data: Mapping[str, Any], document: Document, path: Path_, topic: str, layer: str) -> Rule:
     """A rule; everything that is not common to all kinds is its body."""
     gives = data.get("gives", ())
-    places = {place[len(path):]: at for place, at in document.places.items() if place[: len(path)] == path}
+    places = {place[len(path) :]: at for place, at in document.places.items() if place[: len(path)] == path}
     return Rule(
-        id=data["id"], version=data["version"], title=data["title"], kind=data["kind"], for_each=data["for_each"],
-        gives=(gives,) if isinstance(gives, str) else tuple(gives), gives_unit=data.get("gives_unit", ""),
+        id=data["id"],
+        version=data["version"],
+        title=data["title"],
+        kind=data["kind"],
+        for_each=data["for_each"],
+        gives=(gives,) if isinstance(gives, str) else tuple(gives),
+        gives_unit=data.get("gives_unit", ""),
         reads=tuple(reads_from(data.get("reads", ()))),
         body={key: value for key, value in data.items() if key not in _RULE_PARTS},
-        say=data["say"], cites=cites_from(data),
+        say=data["say"],
+        cites=cites_from(data),
         changes=tuple(Change(c["version"], c["date"], c["what"], c["why"], c["approved_by"]) for c in data["changes"]),
-        applies_when=data.get("applies_when", {}), valid_within=data.get("valid_within", {}),
-        direction=data.get("direction", {}), note=data.get("note", ""), topic=topic, layer=layer,
-        place=document.place(*path, "id"), places=places,
+        applies_when=data.get("applies_when", {}),
+        valid_within=data.get("valid_within", {}),
+        direction=data.get("direction", {}),
+        note=data.get("note", ""),
+        topic=topic,
+        layer=layer,
+        place=document.place(*path, "id"),
+        places=places,
     )
 
 
@@ -99,8 +133,16 @@ def reads_from(written: Any) -> Iterator[Read]:
 
 def source_from(data: Mapping[str, Any], document: Document, path: Path_) -> Source:
     """A source."""
-    return Source(data["id"], data["title"], data["kind"], data.get("edition", ""), data.get("year", 0),
-                  data["how_checked"], data.get("note", ""), document.place(*path, "id"))
+    return Source(
+        data["id"],
+        data["title"],
+        data["kind"],
+        data.get("edition", ""),
+        data.get("year", 0),
+        data["how_checked"],
+        data.get("note", ""),
+        document.place(*path, "id"),
+    )
 
 
 def ranges_from(data: Mapping[str, Any], path: Path_) -> dict[str, Range]:
@@ -115,48 +157,82 @@ def grade_from(data: Mapping[str, Any], document: Document, path: Path_) -> Grad
         GradeBand(
             thickness=range_at(band["thickness"], (*path, "bands", place, "thickness")),
             composition=ranges_from(band["composition"], (*path, "bands", place, "composition")),
-            ce_iiw_max=band.get("ce_iiw_max"), pcm_max=band.get("pcm_max"), cet_max=band.get("cet_max"),
+            ce_iiw_max=band.get("ce_iiw_max"),
+            pcm_max=band.get("pcm_max"),
+            cet_max=band.get("cet_max"),
             yield_min=band.get("yield_min"),
             tensile=range_at(band["tensile"], (*path, "bands", place, "tensile")) if "tensile" in band else None,
         )
         for place, band in enumerate(data["bands"])
     )
     return Grade(
-        id=data["id"], designation=data["designation"], standard=data.get("standard", top.get("standard", "")),
-        family=data["family"], delivery=tuple(data.get("delivery", ())), group=data.get("group", ""), bands=bands,
-        product=data.get("product", ""), number=data.get("number", ""), p_number=data.get("p_number", ""),
-        aliases=tuple(data.get("aliases", ())), checked=data["checked"], cites=cites_from(data, cites_from(top)),
-        note=data.get("note", ""), place=document.place(*path, "id"),
+        id=data["id"],
+        designation=data["designation"],
+        standard=data.get("standard", top.get("standard", "")),
+        family=data["family"],
+        delivery=tuple(data.get("delivery", ())),
+        group=data.get("group", ""),
+        bands=bands,
+        product=data.get("product", ""),
+        number=data.get("number", ""),
+        p_number=data.get("p_number", ""),
+        aliases=tuple(data.get("aliases", ())),
+        checked=data["checked"],
+        cites=cites_from(data, cites_from(top)),
+        note=data.get("note", ""),
+        place=document.place(*path, "id"),
     )
 
 
 def era_from(data: Mapping[str, Any], document: Document, path: Path_) -> Era:
     """An envelope of undocumented steel."""
     return Era(
-        id=data["id"], title=data["title"], years=data["years"], region=data["region"], family=data["family"],
+        id=data["id"],
+        title=data["title"],
+        years=data["years"],
+        region=data["region"],
+        family=data["family"],
         typical=ranges_from(data["typical"], (*path, "typical")),
-        ceilings={name: float(value) for name, value in data["ceilings"].items()}, checked=data["checked"],
-        cites=cites_from(data, cites_from(document.data)), note=data.get("note", ""), place=document.place(*path, "id"),
+        ceilings={name: float(value) for name, value in data["ceilings"].items()},
+        checked=data["checked"],
+        cites=cites_from(data, cites_from(document.data)),
+        note=data.get("note", ""),
+        place=document.place(*path, "id"),
     )
 
 
 def consumable_from(data: Mapping[str, Any], document: Document, path: Path_) -> Consumable:
     """A consumable classification."""
     return Consumable(
-        id=data["id"], standard=data["standard"], process=data["process"], covering=data["covering"],
-        hydrogen_max=data.get("hydrogen_max"), yield_min=data.get("yield_min"),
+        id=data["id"],
+        standard=data["standard"],
+        process=data["process"],
+        covering=data["covering"],
+        hydrogen_max=data.get("hydrogen_max"),
+        yield_min=data.get("yield_min"),
         tensile=range_at(data["tensile"], (*path, "tensile")) if "tensile" in data else None,
-        composition=ranges_from(data.get("composition", {}), (*path, "composition")), checked=data["checked"],
-        cites=cites_from(data), note=data.get("note", ""), place=document.place(*path, "id"),
+        composition=ranges_from(data.get("composition", {}), (*path, "composition")),
+        checked=data["checked"],
+        cites=cites_from(data),
+        note=data.get("note", ""),
+        place=document.place(*path, "id"),
     )
 
 
 def case_from(data: Mapping[str, Any], document: Document, path: Path_) -> Case:
     """A worked example."""
     return Case(
-        id=data["id"], rule=data["rule"], given=data["given"], expect=data["expect"], nature=data["nature"],
-        source=data["source"], at=data["at"], tolerance=data.get("tolerance", 0.0),
-        arithmetic=data.get("arithmetic", ""), note=data.get("note", ""), place=document.place(*path, "id"),
+        id=data["id"],
+        rule=data["rule"],
+        given=data["given"],
+        expect=data["expect"],
+        nature=data["nature"],
+        source=data["source"],
+        at=data["at"],
+        tolerance=data.get("tolerance", 0.0),
+        arithmetic=data.get("arithmetic", ""),
+        note=data.get("note", ""),
+        place=document.place(*path, "id"),
     )
 
 

@@ -16,8 +16,12 @@ from weldbasis.places import schema_folder
 from weldbasis.problem import Problem, nearest
 
 _TYPES = {
-    "object": "a mapping (key: value)", "array": "a list", "string": "a text", "number": "a number",
-    "integer": "a whole number", "boolean": "true or false",
+    "object": "a mapping (key: value)",
+    "array": "a list",
+    "string": "a text",
+    "number": "a number",
+    "integer": "a whole number",
+    "boolean": "true or false",
 }
 RULE_KINDS = ("formula", "table", "gather", "governing", "model", "limit")
 
@@ -57,7 +61,9 @@ def _explained(error: ValidationError, document: Document, path: Path_) -> Itera
     elif error.validator == "additionalProperties":
         yield from _unknown_keys(error, document, where)
     elif error.validator == "required":
-        missing = [name for name in error.validator_value if name not in error.instance]
+        wanted: Any = error.validator_value
+        present: Any = error.instance
+        missing = [name for name in wanted if name not in present]
         for name in missing[:1] if error.parent is not None else missing:
             yield document.problem(where, f"{name!r} is missing here", _description(error, name), f"add '{name}: …'")
     else:
@@ -71,20 +77,24 @@ def _best_branch(error: ValidationError, document: Document, path: Path_) -> Ite
     for inner in error.context or ():
         branches.setdefault(int(inner.schema_path[0]), []).append(inner)
     shallow = len(error.absolute_path)
-    deep = [b for b in branches.values() if all(len(e.absolute_path) > shallow or e.validator not in ("type", "required")
-                                               for e in b)]
+    deep = [
+        b
+        for b in branches.values()
+        if all(len(e.absolute_path) > shallow or e.validator not in ("type", "required") for e in b)
+    ]
     if len(deep) >= 1:
         best = min(deep, key=len)
         for inner in best:
             yield from _explained(inner, document, path)
         return
     where: Path_ = (*path, *error.absolute_path)
-    needed = [e.validator_value for b in branches.values() for e in b if e.validator == "required"]
+    needed: list[Any] = [e.validator_value for b in branches.values() for e in b if e.validator == "required"]
     if needed:
         words = " or ".join(repr(names[0]) for names in needed)
         yield document.problem(where, f"one of {words} is missing here", do="add the one that fits")
         return
-    kinds = dict.fromkeys(_type_words(e.validator_value) for b in branches.values() for e in b if e.validator == "type")
+    types: list[Any] = [e.validator_value for b in branches.values() for e in b if e.validator == "type"]
+    kinds = dict.fromkeys(_type_words(wanted) for wanted in types)
     what = f"{_seen(error.instance)} cannot stand here; {' or '.join(kinds) or 'another value'} is wanted"
     yield document.problem(where, what, _own_description(error))
 
@@ -97,13 +107,15 @@ def _unknown_keys(error: ValidationError, document: Document, where: Path_) -> I
     for pattern in patterns:
         known += [word for word in pattern.strip("^$()").split("|") if word.isalnum()]
     validator = Draft202012Validator({"patternProperties": dict.fromkeys(patterns, False)})
-    for key in error.instance:
+    instance: Any = error.instance
+    for key in instance:
         if key not in known and not (patterns and not validator.is_valid({key: 0})):
             yield document.problem((*where, key), f"{key!r} is not known here", "", nearest(str(key), known))
 
 
 def _plain(error: ValidationError) -> tuple[str, str]:
-    value, wanted = _seen(error.instance), error.validator_value
+    value = _seen(error.instance)
+    wanted: Any = error.validator_value
     match error.validator:
         case "type":
             return f"{value} stands where {_type_words(wanted)} is wanted", ""

@@ -64,10 +64,20 @@ def read_yaml(path: Path, shown: str = "") -> Document:
     try:
         size = path.stat().st_size
     except OSError as fault:
-        raise Refused([Problem(Place(name), f"cannot be read: {fault.strerror}", do="check the name and the rights")]) from fault
+        raise Refused(
+            [Problem(Place(name), f"cannot be read: {fault.strerror}", do="check the name and the rights")]
+        ) from fault
     if size > LARGEST_BYTES:
-        raise Refused([Problem(Place(name), f"the file has {size} bytes; at most {LARGEST_BYTES} are read",
-                               "so large a file is no hand-kept knowledge", "split it")])
+        raise Refused(
+            [
+                Problem(
+                    Place(name),
+                    f"the file has {size} bytes; at most {LARGEST_BYTES} are read",
+                    "so large a file is no hand-kept knowledge",
+                    "split it",
+                )
+            ]
+        )
     return parse_yaml(path.read_bytes(), name)
 
 
@@ -127,7 +137,11 @@ class _Reader:
             elif isinstance(event, yaml.NodeEvent):
                 data = self._value(event, events, (), 0)
                 if not isinstance(event, yaml.MappingStartEvent):
-                    self._add(event, "the file does not start with 'key: value' lines", do="see the schema of this kind of file")
+                    self._add(
+                        event,
+                        "the file does not start with 'key: value' lines",
+                        do="see the schema of this kind of file",
+                    )
         if data is None and not self.problems:
             self.problems.append(Problem(Place(self.name), "the file is empty", do="write it, or take it away"))
         return data
@@ -135,11 +149,17 @@ class _Reader:
     def _value(self, event: Any, events: Iterator[Any], path: Path_, depth: int) -> Any:
         self.places.setdefault(path, self._place(event))
         if isinstance(event, yaml.AliasEvent):
-            self._add(event, f"'*{event.anchor}' repeats another part of the file",
-                      "aliases hide what a rule says and can blow a file up", "write the values out")
+            self._add(
+                event,
+                f"'*{event.anchor}' repeats another part of the file",
+                "aliases hide what a rule says and can blow a file up",
+                "write the values out",
+            )
             return None
         if event.anchor:
-            self._add(event, f"'&{event.anchor}' names a part for repeating", "aliases are not used here", "take it out")
+            self._add(
+                event, f"'&{event.anchor}' names a part for repeating", "aliases are not used here", "take it out"
+            )
         if event.tag is not None and event.tag != "!":
             self._add(event, f"the tag {event.tag!r} cannot stand here", "files hold plain data only", "take it out")
         if isinstance(event, yaml.ScalarEvent):
@@ -170,8 +190,12 @@ class _Reader:
             self.places[(*path, key)] = place
             value = self._value(next(events), events, (*path, key), depth + 1)
             if key in first:
-                self._add(event, f"{key!r} stands here twice; first in line {first[key].line}",
-                          "of two equal keys one would silently win", "keep one of them")
+                self._add(
+                    event,
+                    f"{key!r} stands here twice; first in line {first[key].line}",
+                    "of two equal keys one would silently win",
+                    "keep one of them",
+                )
             else:
                 first[key] = place
                 found[key] = value
@@ -184,10 +208,15 @@ class _Reader:
             return "?"
         if event.implicit[0] and not event.style:
             if event.value == "<<":
-                self._add(event, "'<<' merges another part of the file", "merging hides what a rule says", "write it out")
+                self._add(
+                    event, "'<<' merges another part of the file", "merging hides what a rule says", "write it out"
+                )
             if _YES_NO.fullmatch(event.value) and len(event.value) > 1:
-                self._add(event, f"plain {event.value} is read as true or false by most YAML readers",
-                          do=f'write "{event.value}" in quotes')
+                self._add(
+                    event,
+                    f"plain {event.value} is read as true or false by most YAML readers",
+                    do=f'write "{event.value}" in quotes',
+                )
         return str(event.value)
 
     def _scalar(self, event: Any) -> Any:
@@ -219,22 +248,37 @@ def _trap(word: str) -> tuple[str, str, str] | None:
     """What is treacherous about a plain word, why, and what to write."""
     quoted = f'write "{word}" in quotes for the text'
     if word in ("", "~", "null", "Null", "NULL"):
-        return "nothing stands after this key", "an empty value would be read as null", "write the value, or take the key out"
+        return (
+            "nothing stands after this key",
+            "an empty value would be read as null",
+            "write the value, or take the key out",
+        )
     if _YES_NO.fullmatch(word):
         return f"plain {word} is read as true or false by most YAML readers", "", f'write "{word}" in quotes'
     if _OTHER_BOOL.fullmatch(word):
         return f"{word} is spelled {word.lower()} here", "", f"write {word.lower()}, or {quoted}"
     if _SLIPPERY_REAL.fullmatch(word):
-        return (f"{word} is a text to some YAML readers and a number to others", "",
-                f"write {float(word)!r} for the number, or {quoted}")
+        return (
+            f"{word} is a text to some YAML readers and a number to others",
+            "",
+            f"write {float(word)!r} for the number, or {quoted}",
+        )
     if _DATE.fullmatch(word):
         return f"{word} is read as a date by most YAML readers", "", quoted
     if _CLOCK.fullmatch(word):
         return f"{word} is read as a count of seconds by some YAML readers", "", quoted
     if _OCTAL.fullmatch(word):
-        return f"{word} is read to base 8, 16 or 2 by some YAML readers", "", f"write it without the leading 0, or {quoted}"
+        return (
+            f"{word} is read to base 8, 16 or 2 by some YAML readers",
+            "",
+            f"write it without the leading 0, or {quoted}",
+        )
     if _NOT_FINITE.fullmatch(word):
-        return f"{word} is no number that can be measured", "", "write a range such as '> 38' where there is no upper end"
+        return (
+            f"{word} is no number that can be measured",
+            "",
+            "write a range such as '> 38' where there is no upper end",
+        )
     if _GROUPED.fullmatch(word):
         return f"{word} is a number to some YAML readers and a text to others", "", "write it without '_'"
     return None

@@ -43,9 +43,18 @@ MODELS: Mapping[str, Model] = {
         Model(
             "plate-diffusion-time",
             "Hours until the mean hydrogen of a uniformly charged plate, open at both faces, has fallen to a share.",
-            {"thickness": Argument("mm", "up"), "temperature": Argument("degC", "down"), "share_left": Argument("", "down")},
-            {"d0_low_cm2_s": "cm**2/s", "e_low_j_mol": "J/mol", "d0_high_cm2_s": "cm**2/s", "e_high_j_mol": "J/mol",
-             "gas_constant_j_mol_k": "J/mol/K"},
+            {
+                "thickness": Argument("mm", "up"),
+                "temperature": Argument("degC", "down"),
+                "share_left": Argument("", "down"),
+            },
+            {
+                "d0_low_cm2_s": "cm**2/s",
+                "e_low_j_mol": "J/mol",
+                "d0_high_cm2_s": "cm**2/s",
+                "e_high_j_mol": "J/mol",
+                "gas_constant_j_mol_k": "J/mol/K",
+            },
             "h",
             hours_to_mean_share,
         ),

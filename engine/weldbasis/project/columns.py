@@ -66,8 +66,14 @@ def facts_from_rows(knowledge: Knowledge, rows: Sequence[JointRow]) -> Facts:
             continue
         given[quantity.id] = _column(quantity, cells)
         places[quantity.id] = np.array([origins.setdefault(cell.origin, len(origins)) for cell in cells], np.intp)
-    return Facts(tuple(row.id for row in rows), tuple(m.name for _, m in members),
-                 np.array([number for number, _ in members], np.intp), given, places, tuple(origins))
+    return Facts(
+        tuple(row.id for row in rows),
+        tuple(m.name for _, m in members),
+        np.array([number for number, _ in members], np.intp),
+        given,
+        places,
+        tuple(origins),
+    )
 
 
 def _cell(quantity: Quantity, fact: Fact | None, weld_metal: bool) -> _Cell:
@@ -106,8 +112,11 @@ def _column(quantity: Quantity, cells: Sequence[_Cell]) -> Column:
 def plain_facts(rows: Sequence[JointRow]) -> list[dict[str, Any]]:
     """All given facts as plain data, in vocabulary units, for the digest of a project's inputs."""
     return [
-        {"joint": row.id, "facts": _plain(row.facts),
-         "members": [{"name": member.name, "facts": _plain(member.facts)} for member in row.members]}
+        {
+            "joint": row.id,
+            "facts": _plain(row.facts),
+            "members": [{"name": member.name, "facts": _plain(member.facts)} for member in row.members],
+        }
         for row in rows
     ]
 

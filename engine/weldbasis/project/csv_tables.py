@@ -38,7 +38,9 @@ def read_rows(path: Path, shown: str) -> list[Row]:
         text = path.read_text(encoding="utf-8-sig")
     except (OSError, UnicodeDecodeError) as fault:
         reason = fault.strerror if isinstance(fault, OSError) else "this is not UTF-8 text"
-        raise Refused([Problem(Place(shown), f"cannot be read: {reason}", do="check the name; save it as UTF-8 CSV")]) from fault
+        raise Refused(
+            [Problem(Place(shown), f"cannot be read: {reason}", do="check the name; save it as UTF-8 CSV")]
+        ) from fault
     delimiter = ";" if text.split("\n", 1)[0].count(";") > text.split("\n", 1)[0].count(",") else ","
     lines = list(csv.reader(io.StringIO(text), delimiter=delimiter))
     if not lines:
@@ -60,13 +62,19 @@ def _rows(lines: list[list[str]], units: Mapping[str, str], shown: str) -> Itera
         if not any(cell.strip() for cell in cells) or cells[0].lstrip().startswith("#"):
             continue
         if len(cells) != len(units):
-            problems.append(Problem(Place(shown, number), f"{len(cells)} cells stand under {len(units)} headers",
-                                    do="check for a separator too many or too few; put text with separators in quotes"))
+            problems.append(
+                Problem(
+                    Place(shown, number),
+                    f"{len(cells)} cells stand under {len(units)} headers",
+                    do="check for a separator too many or too few; put text with separators in quotes",
+                )
+            )
             continue
         row = Row({name: cell.strip() for name, cell in zip(units, cells, strict=True)}, units, shown, number)
         problems += [
             Problem(row.place(name), f"{cell!r} has a decimal comma", do="write a decimal point")
-            for name, cell in row.cells.items() if _DECIMAL_COMMA.fullmatch(cell)
+            for name, cell in row.cells.items()
+            if _DECIMAL_COMMA.fullmatch(cell)
         ]
         yield row
     if problems:
@@ -91,8 +99,7 @@ def joint_from(row: Row) -> dict[str, Any]:
 
 def certificate_from(row: Row) -> tuple[str, dict[str, Any]]:
     """A certificate's number, and its heat and composition as the project file would write a steel."""
-    composition = {name: cell for name, cell in row.cells.items()
-                   if re.fullmatch(r"[A-Z][a-z]?", name) and cell}
+    composition = {name: cell for name, cell in row.cells.items() if re.fullmatch(r"[A-Z][a-z]?", name) and cell}
     origin = {"certificate": row.cells.get("certificate", "")}
     if row.cells.get("heat"):
         origin["heat"] = row.cells["heat"]

@@ -5,8 +5,8 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import cache
 from difflib import get_close_matches
+from functools import cache
 
 from weldbasis.knowledge import Grade, Knowledge
 from weldbasis.ranges import Range
@@ -89,8 +89,10 @@ def limits_in(grade: Grade, thickness: Range) -> GradeLimits | None:
 
     return GradeLimits(
         dict(sorted(composition.items())),
-        loosest([band.ce_iiw_max for band in bands]), loosest([band.pcm_max for band in bands]),
-        loosest([band.cet_max for band in bands]), least([band.yield_min for band in bands]),
+        loosest([band.ce_iiw_max for band in bands]),
+        loosest([band.pcm_max for band in bands]),
+        loosest([band.cet_max for band in bands]),
+        least([band.yield_min for band in bands]),
         least([band.tensile.low if band.tensile else None for band in bands]),
     )
 

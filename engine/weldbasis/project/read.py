@@ -12,7 +12,7 @@ from weldbasis.knowledge import Consumable, Knowledge, Quantity
 from weldbasis.load.schema import schema_problems
 from weldbasis.load.yaml_text import Document, read_yaml
 from weldbasis.problem import Place, Problem, Refused, nearest
-from weldbasis.project.columns import MemberRow, JointRow, facts_from_rows, plain_facts
+from weldbasis.project.columns import JointRow, MemberRow, facts_from_rows, plain_facts
 from weldbasis.project.csv_tables import certificate_from, joint_from, read_rows
 from weldbasis.project.entries import JointEntry, Project
 from weldbasis.project.grades import NoSuchGrade, find_grade
@@ -21,7 +21,6 @@ from weldbasis.ranges import Range
 from weldbasis.units import read_number
 
 _JOINT_WORDS = frozenset({"joint", "title", "members", "note", "assumptions", "consumable", "weld_metal", "form"})
-_MEMBER_WORDS = {"steel": "", "thickness": "member_thickness"}
 
 
 @dataclass
@@ -38,15 +37,25 @@ class _Reading:
     def fault(self, place: Place, what: str, why: str = "", do: str = "") -> None:
         """Note a problem; its line is shown where it stands in the project file."""
         inside = place.file == self.document.file
-        self.problems.append(self.document.problem_at(place, what, why, do) if inside else Problem(place, what, why, do))
+        self.problems.append(
+            self.document.problem_at(place, what, why, do) if inside else Problem(place, what, why, do)
+        )
 
 
 def read_project(path: Path, knowledge: Knowledge) -> Project:
     """Read the project in a folder (or its project.yaml). Raises Refused with every problem."""
     file = path / "project.yaml" if path.is_dir() else path
     if not file.exists():
-        raise Refused([Problem(Place(str(file)), "there is no such file", "a project is a folder with a project.yaml",
-                               f"make one with: weldbasis start {path}")])
+        raise Refused(
+            [
+                Problem(
+                    Place(str(file)),
+                    "there is no such file",
+                    "a project is a folder with a project.yaml",
+                    f"make one with: weldbasis start {path}",
+                )
+            ]
+        )
     shown = _shown(file)
     document = read_yaml(file, shown)
     if problems := schema_problems(document, "project"):
@@ -57,11 +66,15 @@ def read_project(path: Path, knowledge: Knowledge) -> Project:
     certificates = _certificates(reading, data)
     _steels(reading, data.get("steels", {}), certificates)
     written = _joint_list(reading, data)
-    rows = [row for place, joint in written if (row := _joint(reading, joint, place, data.get("defaults", {}), contract))]
+    rows = [
+        row for place, joint in written if (row := _joint(reading, joint, place, data.get("defaults", {}), contract))
+    ]
     names: dict[str, Place] = {}
     for row in rows:
         if row.id in names:
-            reading.fault(row.place, f"joint {row.id!r} stands here twice", f"first in {names[row.id]}", "give it another name")
+            reading.fault(
+                row.place, f"joint {row.id!r} stands here twice", f"first in {names[row.id]}", "give it another name"
+            )
         names.setdefault(row.id, row.place)
     if reading.problems:
         raise Refused(reading.problems)
@@ -78,24 +91,43 @@ def _shown(path: Path) -> str:
 def _project(reading: _Reading, rows: list[JointRow], contract: tuple[str, ...]) -> Project:
     data = reading.document.data
     entries = tuple(
-        JointEntry(row.id, row.title, row.form, tuple(m.name for m in row.members), str(row.place), row.note) for row in rows
+        JointEntry(row.id, row.title, row.form, tuple(m.name for m in row.members), str(row.place), row.note)
+        for row in rows
     )
     facts = facts_from_rows(reading.knowledge, rows)
     meaning = {
-        "project": data["project"], "title": data["title"], "contract": list(contract), "rules": str(data["rules"]),
+        "project": data["project"],
+        "title": data["title"],
+        "contract": list(contract),
+        "rules": str(data["rules"]),
         "joints": plain_facts(rows),
     }
     steels = {name: steel_entry(steel) for name, steel in reading.steels.items()}
-    return Project(data["project"], data["title"], str(data["rules"]), contract, reading.folder, entries, steels, facts,
-                   meaning, data.get("description", ""))
+    return Project(
+        data["project"],
+        data["title"],
+        str(data["rules"]),
+        contract,
+        reading.folder,
+        entries,
+        steels,
+        facts,
+        meaning,
+        data.get("description", ""),
+    )
 
 
 def _contract(reading: _Reading, names: list[str]) -> tuple[str, ...]:
-    known = [q.removeprefix("contract_").replace("_", "-") for q in reading.knowledge.quantities if q.startswith("contract_")]
+    known = [
+        q.removeprefix("contract_").replace("_", "-") for q in reading.knowledge.quantities if q.startswith("contract_")
+    ]
     for place, name in enumerate(names):
         if name not in known:
-            reading.fault(reading.document.place("contract", place), f"{name!r} is no requirement set known here",
-                          do=nearest(name, known))
+            reading.fault(
+                reading.document.place("contract", place),
+                f"{name!r} is no requirement set known here",
+                do=nearest(name, known),
+            )
     return tuple(name for name in names if name in known)
 
 
@@ -111,19 +143,26 @@ def _certificates(reading: _Reading, data: Mapping[str, Any]) -> dict[str, dict[
 
 
 def _steels(reading: _Reading, written: Mapping[str, Any], certificates: Mapping[str, dict[str, Any]]) -> None:
-    for name, entry in written.items():
+    for name, said in written.items():
+        entry = said
         place = reading.document.place("steels", name)
         if "certificate" in entry:
             number = str(entry["certificate"])
             if number not in certificates:
-                reading.fault(reading.document.place("steels", name, "certificate"), f"certificate {number!r} is not in the list",
-                              do=nearest(number, certificates))
+                reading.fault(
+                    reading.document.place("steels", name, "certificate"),
+                    f"certificate {number!r} is not in the list",
+                    do=nearest(number, certificates),
+                )
             paper = certificates.get(number, {})
-            entry = {**paper, **entry, "origin": {**paper.get("origin", {}), **entry.get("origin", {})},
-                     "composition": {**paper.get("composition", {}), **entry.get("composition", {})}}
+            entry = _with_paper(entry, paper)
         if not any(key in entry for key in ("composition", "samples", "grade", "era")):
-            reading.fault(place, f"nothing is said of steel {name!r}", "a steel needs a composition, samples, a grade or an era",
-                          "say what is known; for undocumented steel name its era")
+            reading.fault(
+                place,
+                f"nothing is said of steel {name!r}",
+                "a steel needs a composition, samples, a grade or an era",
+                "say what is known; for undocumented steel name its era",
+            )
         grade = era = None
         if "grade" in entry:
             try:
@@ -133,13 +172,26 @@ def _steels(reading: _Reading, written: Mapping[str, Any], certificates: Mapping
         if "era" in entry:
             era = reading.knowledge.eras.get(str(entry["era"]))
             if era is None:
-                reading.fault(reading.document.place("steels", name, "era"), f"{entry['era']!r} is no era known here",
-                              do=nearest(str(entry["era"]), reading.knowledge.eras))
+                reading.fault(
+                    reading.document.place("steels", name, "era"),
+                    f"{entry['era']!r} is no era known here",
+                    do=nearest(str(entry["era"]), reading.knowledge.eras),
+                )
         reading.steels[name] = Steel(name, entry, grade, era, f"{place.file}:{place.line}")
         try:
             member_facts(reading.steels[name], Range(0.0, float("inf")))
         except ValueError as fault:
             reading.fault(place, f"steel {name!r}: {fault}")
+
+
+def _with_paper(entry: Mapping[str, Any], paper: Mapping[str, Any]) -> dict[str, Any]:
+    """What a project says of a steel on top of what its certificate says."""
+    return {
+        **paper,
+        **entry,
+        "origin": {**paper.get("origin", {}), **entry.get("origin", {})},
+        "composition": {**paper.get("composition", {}), **entry.get("composition", {})},
+    }
 
 
 def _joint_list(reading: _Reading, data: Mapping[str, Any]) -> list[tuple[Place, dict[str, Any]]]:
@@ -148,7 +200,9 @@ def _joint_list(reading: _Reading, data: Mapping[str, Any]) -> list[tuple[Place,
     items: list[Any] = [joints] if isinstance(joints, dict) else joints
     found: list[tuple[Place, dict[str, Any]]] = []
     for number, item in enumerate(items):
-        place = reading.document.place("joints") if isinstance(joints, dict) else reading.document.place("joints", number)
+        place = (
+            reading.document.place("joints") if isinstance(joints, dict) else reading.document.place("joints", number)
+        )
         if set(item) == {"csv"}:
             try:
                 rows = read_rows(reading.folder / item["csv"], _shown(reading.folder / item["csv"]))
@@ -170,17 +224,21 @@ def _joint(
     if not name:
         reading.fault(place, "a joint has no name", do="add joint: J1")
         return None
-    fields = {**defaults, **{key: value for key, value in written.items()}}
+    fields = {**defaults, **written}
     facts = _joint_facts(reading, name, written, fields, place)
     for quantity in reading.knowledge.quantities:
         if quantity.startswith("contract_") and quantity not in facts:
             bound = quantity.removeprefix("contract_").replace("_", "-") in contract
-            facts[quantity] = Fact(("yes",) if bound else ("no",), Origin("project", "the project's contract list", str(place)))
+            facts[quantity] = Fact(
+                ("yes",) if bound else ("no",), Origin("project", "the project's contract list", str(place))
+            )
     consumable = _consumable(reading, fields, place)
     if consumable:
         origin = Origin("consumable", f"classification {consumable.id}", str(place))
         if consumable.hydrogen_max is not None:
-            facts.setdefault("consumable_hydrogen_max", Fact(Range(consumable.hydrogen_max, consumable.hydrogen_max), origin))
+            facts.setdefault(
+                "consumable_hydrogen_max", Fact(Range(consumable.hydrogen_max, consumable.hydrogen_max), origin)
+            )
         facts.setdefault("covering", Fact((consumable.covering,), origin))
     members = _members(reading, name, fields.get("members", []), place, consumable, fields.get("weld_metal", {}))
     form = str(fields.get("form", ""))
@@ -193,7 +251,11 @@ def _consumable(reading: _Reading, fields: Mapping[str, Any], place: Place) -> C
         return None
     found = reading.knowledge.consumables.get(str(name))
     if found is None:
-        reading.fault(place, f"{name!r} is no consumable classification known here", do=nearest(str(name), reading.knowledge.consumables))
+        reading.fault(
+            place,
+            f"{name!r} is no consumable classification known here",
+            do=nearest(str(name), reading.knowledge.consumables),
+        )
     return found
 
 
@@ -202,7 +264,8 @@ def _joint_facts(
 ) -> dict[str, Fact]:
     reasons = {**fields.get("assumptions", {})}
     found: dict[str, Fact] = {}
-    for key, value in fields.items():
+    for key, said in fields.items():
+        value = said
         if key in _JOINT_WORDS and key != "form":
             continue
         at = place if key not in written or place.file != reading.document.file else _inner(reading, place, key)
@@ -211,10 +274,15 @@ def _joint_facts(
             known = [q.id for q in reading.knowledge.quantities.values() if q.of == "joint" and q.given != "never"]
             why = "each member has it, not the joint" if quantity and quantity.of == "member" else ""
             why = "it is worked out, never given" if quantity and quantity.given == "never" else why
-            reading.fault(at, f"joint {name}: {key!r} is no field of a joint", why, nearest(key, [*known, *sorted(_JOINT_WORDS)]))
+            reading.fault(
+                at, f"joint {name}: {key!r} is no field of a joint", why, nearest(key, [*known, *sorted(_JOINT_WORDS)])
+            )
             continue
-        origin = Origin("project", f"project, joint {name}", str(at)) if key in written else Origin(
-            "default", "default of the project", reading.shown)
+        origin = (
+            Origin("project", f"project, joint {name}", str(at))
+            if key in written
+            else Origin("default", "default of the project", reading.shown)
+        )
         if isinstance(value, dict):
             reasons[key] = value.get("because", "")
             value = value.get("value")
@@ -246,7 +314,9 @@ def _fact(
                 raise ValueError("a number or a range 'a to b' is wanted, not a list")
             number = read_number(value, quantity.unit)
             if number.low < quantity.range.low or number.high > quantity.range.high:
-                raise ValueError(f"{value!r} lies outside what {quantity.id} can be, {quantity.range} {quantity.unit}".rstrip())
+                raise ValueError(
+                    f"{value!r} lies outside what {quantity.id} can be, {quantity.range} {quantity.unit}".rstrip()
+                )
             return Fact(number, origin, assumed)
         levels = [str(level) for level in value] if isinstance(value, list) else [str(value)]
         for level in levels:
@@ -259,14 +329,24 @@ def _fact(
 
 
 def _members(
-    reading: _Reading, joint: str, written: Any, place: Place, consumable: Consumable | None, weld_metal: Mapping[str, Any]
+    reading: _Reading,
+    joint: str,
+    written: Any,
+    place: Place,
+    consumable: Consumable | None,
+    weld_metal: Mapping[str, Any],
 ) -> tuple[MemberRow, ...]:
     if not isinstance(written, list) or not written:
-        reading.fault(place, f"joint {joint} has no members", "a joint is made of two or more parts",
-                      "add members: [{steel: …, thickness: …}, …]")
+        reading.fault(
+            place,
+            f"joint {joint} has no members",
+            "a joint is made of two or more parts",
+            "add members: [{steel: …, thickness: …}, …]",
+        )
         return ()
-    rows = [row for number, part in enumerate(written, start=1)
-            if (row := _member(reading, joint, number, part, place))]
+    rows = [
+        row for number, part in enumerate(written, start=1) if (row := _member(reading, joint, number, part, place))
+    ]
     project = Origin("project", f"project, joint {joint}", str(place))
     try:
         facts = weld_metal_facts(weld_metal, consumable, str(place))
@@ -290,12 +370,14 @@ def _member(reading: _Reading, joint: str, number: int, part: Any, place: Place)
     origin = Origin("project", f"project, {whose}", str(place))
     own: dict[str, Fact] = {}
     for key, value in part.items():
-        quantity = reading.knowledge.quantities.get(_MEMBER_WORDS.get(key, key)) if key != "steel" else None
         if key == "steel":
             continue
+        quantity = reading.knowledge.quantities.get("member_thickness" if key == "thickness" else str(key))
         if quantity is None or quantity.of != "member":
             known = [q.id for q in reading.knowledge.quantities.values() if q.of == "member" and q.given != "never"]
-            reading.fault(place, f"{whose}: {key!r} is no field of a member", do=nearest(key, ["steel", "thickness", *known]))
+            reading.fault(
+                place, f"{whose}: {key!r} is no field of a member", do=nearest(key, ["steel", "thickness", *known])
+            )
             continue
         fact = _fact(reading, quantity, value, origin, place, whose, False)
         if fact:

@@ -18,9 +18,21 @@ from weldbasis.ranges import Range
 from weldbasis.units import read_number
 
 ELEMENTS: Mapping[str, str] = {
-    "C": "carbon", "Si": "silicon", "Mn": "manganese", "P": "phosphorus", "S": "sulphur", "Cr": "chromium",
-    "Mo": "molybdenum", "Ni": "nickel", "Cu": "copper", "V": "vanadium", "Nb": "niobium", "Ti": "titanium",
-    "B": "boron", "Al": "aluminium", "N": "nitrogen",
+    "C": "carbon",
+    "Si": "silicon",
+    "Mn": "manganese",
+    "P": "phosphorus",
+    "S": "sulphur",
+    "Cr": "chromium",
+    "Mo": "molybdenum",
+    "Ni": "nickel",
+    "Cu": "copper",
+    "V": "vanadium",
+    "Nb": "niobium",
+    "Ti": "titanium",
+    "B": "boron",
+    "Al": "aluminium",
+    "N": "nitrogen",
 }
 
 
@@ -104,8 +116,13 @@ def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
     for element, (low, high) in limits.composition.items():
         if element in ELEMENTS and high != float("inf"):
             found[ELEMENTS[element]] = Fact(Range(low, high), origin)
-    for quantity, number in (("ce_iiw_limit", limits.ce_iiw), ("pcm_limit", limits.pcm), ("cet_limit", limits.cet),
-                             ("yield_strength", limits.yield_min), ("tensile_strength", limits.tensile_min)):
+    for quantity, number in (
+        ("ce_iiw_limit", limits.ce_iiw),
+        ("pcm_limit", limits.pcm),
+        ("cet_limit", limits.cet),
+        ("yield_strength", limits.yield_min),
+        ("tensile_strength", limits.tensile_min),
+    ):
         if number is not None:
             found[quantity] = Fact(Range(number, number), origin)
     return found
@@ -143,7 +160,7 @@ def _from_samples(steel: Steel, samples: Sequence[Mapping[str, Any]]) -> dict[st
 
 
 def weld_metal_facts(written: Mapping[str, Any], consumable: Consumable | None, place: str) -> dict[str, Fact]:
-    """Facts of a joint's weld metal from its own analysis or its consumable's classification; empty where neither is there."""
+    """Facts of a joint's weld metal from its own analysis or its consumable's class; empty where neither is there."""
     found: dict[str, Fact] = {}
     if consumable:
         origin = Origin("consumable", f"classification {consumable.id}", place)
@@ -152,10 +169,16 @@ def weld_metal_facts(written: Mapping[str, Any], consumable: Consumable | None, 
             found["tensile_strength"] = Fact(Range(consumable.tensile.low, consumable.tensile.low), origin)
         if consumable.yield_min:
             found["yield_strength"] = Fact(Range(consumable.yield_min, consumable.yield_min), origin)
-    origin = Origin("project", str(written.get("origin", {}).get("note", "analysis of the weld metal in the project")), place)
+    origin = Origin(
+        "project", str(written.get("origin", {}).get("note", "analysis of the weld metal in the project")), place
+    )
     if "certificate" in written.get("origin", {}):
         origin = Origin("certificate", f"certificate {written['origin']['certificate']}", place)
-    found |= {ELEMENTS[e]: Fact(read_number(v, "%"), origin) for e, v in written.get("composition", {}).items() if e in ELEMENTS}
+    found |= {
+        ELEMENTS[e]: Fact(read_number(v, "%"), origin)
+        for e, v in written.get("composition", {}).items()
+        if e in ELEMENTS
+    }
     for field, unit in (("tensile_strength", "MPa"), ("yield_strength", "MPa")):
         if field in written:
             found[field] = Fact(read_number(written[field], unit), origin)
@@ -168,16 +191,26 @@ def steel_entry(steel: Steel) -> SteelEntry:
     by_quantity = {quantity: element for element, quantity in ELEMENTS.items()}
     composition = {
         by_quantity[name]: (fact.value.low, fact.value.high)
-        for name, fact in facts.items() if name in by_quantity and isinstance(fact.value, Range)
+        for name, fact in facts.items()
+        if name in by_quantity and isinstance(fact.value, Range)
     }
     origin = paper_of(steel)
     kind: OriginKind = origin.kind
     if not steel.written.get("composition"):
         kind = "samples" if steel.written.get("samples") else "grade-limit" if steel.grade else "era-envelope"
     written = steel.written.get("origin", {})
-    title = steel.written.get("title") or (steel.grade.designation if steel.grade else steel.era.title if steel.era else steel.id)
+    title = steel.written.get("title") or (
+        steel.grade.designation if steel.grade else steel.era.title if steel.era else steel.id
+    )
     return SteelEntry(
-        steel.id, str(title), steel.grade.id if steel.grade else "", steel.era.id if steel.era else "",
-        str(written.get("certificate", steel.written.get("certificate", ""))), str(written.get("heat", "")), kind,
-        dict(sorted(composition.items())), len(steel.written.get("samples", ())), origin,
+        steel.id,
+        str(title),
+        steel.grade.id if steel.grade else "",
+        steel.era.id if steel.era else "",
+        str(written.get("certificate", steel.written.get("certificate", ""))),
+        str(written.get("heat", "")),
+        kind,
+        dict(sorted(composition.items())),
+        len(steel.written.get("samples", ())),
+        origin,
     )

@@ -66,7 +66,9 @@ def decide_projects(folders: Sequence[Path], knowledge: Knowledge, progress: Pro
     return Content(knowledge, graph, tuple(decided))
 
 
-def _decided(knowledge: Knowledge, project: Project, traces: tuple[JointTrace, ...], record: Mapping[str, Any]) -> Decided:
+def _decided(
+    knowledge: Knowledge, project: Project, traces: tuple[JointTrace, ...], record: Mapping[str, Any]
+) -> Decided:
     states = Counter(
         d.state for trace in traces for d in trace.decisions if not knowledge.quantities[d.ref.quantity].part_of
     )
@@ -93,7 +95,7 @@ def joints_csv(knowledge: Knowledge, decided: Decided) -> str:
     """The decisions of a project as CSV, a joint a row."""
     out = io.StringIO()
     writer = csv.writer(out, lineterminator="\n")
-    decisions = [q for q in knowledge.decisions]
+    decisions = list(knowledge.decisions)
     writer.writerow(["joint", *[f"{q.id} [{q.unit}]" if q.unit else q.id for q in decisions], "findings"])
     for trace in decided.traces:
         by_name = {d.ref.quantity: d for d in trace.decisions}

@@ -36,16 +36,26 @@ class Line:
 
 def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace: JointTrace, digest: str) -> str:
     """The HTML of a joint's page."""
-    shown = [d for d in trace.decisions if not (knowledge.quantities[d.ref.quantity].part_of and d.state == "uncovered")]
+    shown = [
+        d for d in trace.decisions if not (knowledge.quantities[d.ref.quantity].part_of and d.state == "uncovered")
+    ]
     main = [d for d in shown if not knowledge.quantities[d.ref.quantity].part_of]
     return page(
-        "joint.html", project=project, entry=entry, trace=trace, quantities=knowledge.quantities, rules=knowledge.rules,
-        shown=shown, main=main, digest=digest,
+        "joint.html",
+        project=project,
+        entry=entry,
+        trace=trace,
+        quantities=knowledge.quantities,
+        rules=knowledge.rules,
+        shown=shown,
+        main=main,
+        digest=digest,
         picture=thermal_cycle(cycle_of(trace)),
         chains={d.ref.quantity: chain_lines(knowledge, trace, d) for d in main},
-        methods=methods_of(knowledge, trace), strip=_strip(knowledge, trace),
-        given=given_lines(knowledge, trace), lines=[_line(knowledge, trace, 0, s) for s in trace.steps.values()
-                                                    if s.state in ("gave", "withheld")],
+        methods=methods_of(knowledge, trace),
+        strip=_strip(knowledge, trace),
+        given=given_lines(knowledge, trace),
+        lines=[_line(knowledge, trace, 0, s) for s in trace.steps.values() if s.state in ("gave", "withheld")],
         why_none=lambda step: withheld_reasons(trace, step),
     )
 
@@ -100,7 +110,7 @@ def _arithmetic(knowledge: Knowledge, step: Step) -> str:
 
 
 def _inputs_sentence(knowledge: Knowledge, trace: JointTrace, inputs: list[Step], depths: dict[Ref, int]) -> Sentence:
-    parts = []
+    parts: list[str] = []
     for step in inputs:
         quantity = knowledge.quantities[step.ref.quantity]
         parts.append(f"{quantity.title if not parts else quantity.title.lower()} {value_text(quantity, step.value)}")
@@ -111,8 +121,11 @@ def _inputs_sentence(knowledge: Knowledge, trace: JointTrace, inputs: list[Step]
 
 def given_lines(knowledge: Knowledge, trace: JointTrace) -> list[Line]:
     """What was given, joint first, then part by part."""
-    lines = [_line(knowledge, trace, 0, s) for s in trace.steps.values()
-             if s.state == "given" and not s.ref.quantity.startswith("contract_")]
+    lines = [
+        _line(knowledge, trace, 0, s)
+        for s in trace.steps.values()
+        if s.state == "given" and not s.ref.quantity.startswith("contract_")
+    ]
     return sorted(lines, key=lambda line: line.step.ref.member)
 
 
@@ -128,8 +141,14 @@ def methods_of(knowledge: Knowledge, trace: JointTrace) -> list[tuple[Quantity, 
     for candidate in step.candidates:
         if candidate.ref.quantity in ("preheat_contract", "preheat_general"):
             continue
-        marked = Candidate(candidate.ref, candidate.value, candidate.ref in governing, candidate.taken, candidate.behind,
-                           candidate.remark)
+        marked = Candidate(
+            candidate.ref,
+            candidate.value,
+            candidate.ref in governing,
+            candidate.taken,
+            candidate.behind,
+            candidate.remark,
+        )
         found.append((knowledge.quantities[candidate.ref.quantity], marked, trace.steps[candidate.ref]))
     return found
 
@@ -151,15 +170,26 @@ def _strip(knowledge: Knowledge, trace: JointTrace) -> str:
 
 def cycle_of(trace: JointTrace) -> Cycle:
     """The figures of the thermal cycle."""
+
     def span(name: str) -> tuple[float, float] | None:
         step = trace.steps.get(Ref(name))
-        return (step.value.low, step.value.high) if step and step.value.low is not None and step.value.high is not None else None
+        return (
+            (step.value.low, step.value.high)
+            if step and step.value.low is not None and step.value.high is not None
+            else None
+        )
 
     def number(name: str, high: bool = False) -> float | None:
         found = span(name)
         return None if found is None else found[1] if high else found[0]
 
-    return Cycle(span("ambient"), span("min_preheat"), span("max_interpass"), span("hydrogen_release_temp"),
-                 number("hydrogen_release_time", True), number("pwht_temp_min", True), number("pwht_temp_max"),
-                 number("pwht_hold", True))
-
+    return Cycle(
+        span("ambient"),
+        span("min_preheat"),
+        span("max_interpass"),
+        span("hydrogen_release_temp"),
+        number("hydrogen_release_time", True),
+        number("pwht_temp_min", True),
+        number("pwht_temp_max"),
+        number("pwht_hold", True),
+    )

@@ -17,15 +17,28 @@ from weldbasis.words import number_text, unit_text
 
 ELEMENTS = ("C", "Si", "Mn", "P", "S", "Cr", "Mo", "Ni", "Cu", "V", "Nb", "Ti", "B", "Al", "N")
 _SHORT = {
-    "min_preheat": "preheat", "max_interpass": "interpass max", "hydrogen_class": "hydrogen", "pwht": "heat treatment",
-    "hydrogen_release": "release", "peening": "peening", "inspection_delay": "wait", "z_quality": "Z", "procedure_test": "proof",
+    "min_preheat": "preheat",
+    "max_interpass": "interpass max",
+    "hydrogen_class": "hydrogen",
+    "pwht": "heat treatment",
+    "hydrogen_release": "release",
+    "peening": "peening",
+    "inspection_delay": "wait",
+    "z_quality": "Z",
+    "procedure_test": "proof",
 }
 
 
 def home_body(content: Content) -> str:
     """The home page."""
     knowledge = content.knowledge
-    return page("home.html", projects=content.projects, rules=knowledge.rules, release=knowledge.release, digest=knowledge.digest)
+    return page(
+        "home.html",
+        projects=content.projects,
+        rules=knowledge.rules,
+        release=knowledge.release,
+        digest=knowledge.digest,
+    )
 
 
 def project_body(content: Content, decided: Decided) -> str:
@@ -39,12 +52,24 @@ def project_body(content: Content, decided: Decided) -> str:
         states = {decisions[q.id].state for q in columns}
         stopped = "stopped" if entry.id in decided.stopped else ""
         state = stopped or next((s for s in ("uncovered", "open") if s in states), "settled")
-        rows.append({"entry": entry, "decisions": decisions, "state": state, "parts": list(dict.fromkeys(entry.members[:-1]))})
+        rows.append(
+            {"entry": entry, "decisions": decisions, "state": state, "parts": list(dict.fromkeys(entry.members[:-1]))}
+        )
     holds = [(t.joint, f) for level in ("stop", "hold") for t in decided.traces for f in t.findings if f.level == level]
     steels = list(decided.project.steels.values())
     used = [e for e in ELEMENTS if any(e in steel.composition for steel in steels)]
-    return page("project.html", project=decided.project, columns=columns, short={q.id: _SHORT.get(q.id, "") for q in columns},
-                rows=rows, holds=holds, files=decided.files, steels=steels, elements=used, composition=steel_cell)
+    return page(
+        "project.html",
+        project=decided.project,
+        columns=columns,
+        short={q.id: _SHORT.get(q.id, "") for q in columns},
+        rows=rows,
+        holds=holds,
+        files=decided.files,
+        steels=steels,
+        elements=used,
+        composition=steel_cell,
+    )
 
 
 def steel_cell(steel: SteelEntry, element: str) -> str:
@@ -61,12 +86,26 @@ def rules_body(content: Content) -> str:
     """The index of rules."""
     knowledge = content.knowledge
     rules = sorted(knowledge.rules.values(), key=lambda rule: (rule.topic, rule.id))
-    cites = [cite.checked for rule in rules for cite in rule.cites]
-    marks = ", ".join(f"{cites.count(mark)} {words}" for mark, words in (
-        ("seen", "seen in the source"), ("quoted", "seen quoted"), ("from-memory", "from memory"), ("derived", "derived"),
-        ("common-practice", "common practice")))
-    return page("rules.html", rules=rules, topics=sorted({rule.topic for rule in rules}), title=knowledge.title,
-                release=knowledge.release, digest=knowledge.digest, marks=f"Citations: {marks}.")
+    cites: list[str] = [cite.checked for rule in rules for cite in rule.cites]
+    marks = ", ".join(
+        f"{cites.count(mark)} {words}"
+        for mark, words in (
+            ("seen", "seen in the source"),
+            ("quoted", "seen quoted"),
+            ("from-memory", "from memory"),
+            ("derived", "derived"),
+            ("common-practice", "common practice"),
+        )
+    )
+    return page(
+        "rules.html",
+        rules=rules,
+        topics=sorted({rule.topic for rule in rules}),
+        title=knowledge.title,
+        release=knowledge.release,
+        digest=knowledge.digest,
+        marks=f"Citations: {marks}.",
+    )
 
 
 @dataclass(frozen=True)
@@ -82,15 +121,28 @@ def rule_body(content: Content, rule: Rule, governed: Sequence[tuple[str, list[t
     """A rule's page. `governed` lists, project by project, the joints it governs with their addresses."""
     knowledge, graph = content.knowledge, content.graph
     above = [_neighbour(content, node, up=True) for node in graph.reads(rule_node(rule.id))]
-    below = [_neighbour(content, user, up=False) for given in graph.feeds(rule_node(rule.id)) for user in graph.feeds(given)]
-    reads = [ReadRow(r.name, knowledge.quantities[r.quantity], unit_text(r.unit or knowledge.quantities[r.quantity].unit))
-             for r in rule.reads]
+    below = [
+        _neighbour(content, user, up=False) for given in graph.feeds(rule_node(rule.id)) for user in graph.feeds(given)
+    ]
+    reads = [
+        ReadRow(r.name, knowledge.quantities[r.quantity], unit_text(r.unit or knowledge.quantities[r.quantity].unit))
+        for r in rule.reads
+    ]
     return page(
-        "rule.html", rule=rule, gives=[knowledge.quantities[name] for name in rule.gives], reads=reads,
+        "rule.html",
+        rule=rule,
+        gives=[knowledge.quantities[name] for name in rule.gives],
+        reads=reads,
         formula=symbolic(parse_formula(rule.body["formula"])) if rule.kind == "formula" else "",
-        table=_table(rule) if rule.kind == "table" else None, words=_words(rule), conditions=_conditions(content, rule),
-        directions=_directions(content, rule), sources=knowledge.sources, picture=neighbours(rule.title, above[:14], below[:14]),
-        above=above, below=list(dict.fromkeys(below)), governed=governed,
+        table=_table(rule) if rule.kind == "table" else None,
+        words=_words(rule),
+        conditions=_conditions(content, rule),
+        directions=_directions(content, rule),
+        sources=knowledge.sources,
+        picture=neighbours(rule.title, above[:14], below[:14]),
+        above=above,
+        below=list(dict.fromkeys(below)),
+        governed=governed,
         cases=[case for case in knowledge.cases if case.rule == rule.id],
     )
 
@@ -108,9 +160,17 @@ def _table(rule: Rule) -> dict[str, Any]:
     rows = []
     for row in rule.body["rows"]:
         give = row["give"]
-        given = "; ".join(f"{name} {_cell(v)}" for name, v in give.items()) if isinstance(give, Mapping) else _cell(give)
-        rows.append({"cells": [_cell(row.get("when", {}).get(name, "any")) for name in columns], "give": given,
-                     "checked": row.get("checked", ""), "note": row.get("note", "")})
+        given = (
+            "; ".join(f"{name} {_cell(v)}" for name, v in give.items()) if isinstance(give, Mapping) else _cell(give)
+        )
+        rows.append(
+            {
+                "cells": [_cell(row.get("when", {}).get(name, "any")) for name in columns],
+                "give": given,
+                "checked": row.get("checked", ""),
+                "note": row.get("note", ""),
+            }
+        )
     return {"columns": columns, "rows": rows, "read_as": str(rule.body["read_as"]).replace("-", " ")}
 
 
@@ -122,12 +182,17 @@ def _words(rule: Rule) -> str:
     body = rule.body
     if rule.kind == "gather":
         where = f" where {_mapping_words(body['where'])}" if "where" in body else ""
-        missing = "a member without a value is passed over" if body.get("if_missing") == "skip" else (
-            "a member without a value withholds the result")
+        missing = (
+            "a member without a value is passed over"
+            if body.get("if_missing") == "skip"
+            else ("a member without a value withholds the result")
+        )
         return f"Takes the {body['take']} {body['of']} of the members{where}; {missing}."
     if rule.kind == "governing":
-        names = [c if isinstance(c, str) else c["quantity"] + (f" (when {_mapping_words(c['when'])})" if "when" in c else "")
-                 for c in body["candidates"]]
+        names = [
+            c if isinstance(c, str) else c["quantity"] + (f" (when {_mapping_words(c['when'])})" if "when" in c else "")
+            for c in body["candidates"]
+        ]
         return f"Takes the {body['take']} of: {', '.join(names)}."
     if rule.kind == "model":
         constants = ", ".join(f"{name} = {value:g}" for name, value in body.get("constants", {}).items())
@@ -162,17 +227,28 @@ def _conditions(content: Content, rule: Rule) -> list[str]:
 
 def _directions(content: Content, rule: Rule) -> str:
     words = {"up": "rises", "down": "falls", "either": "may rise or fall"}
-    parts = [f"{words[way]} with {content.knowledge.quantities[name].title.lower()}" for name, way in rule.direction.items()]
+    parts = [
+        f"{words[way]} with {content.knowledge.quantities[name].title.lower()}" for name, way in rule.direction.items()
+    ]
     return f"The result {', '.join(parts)}." if parts else ""
 
 
 def steels_body(content: Content) -> str:
     """The index of steels."""
-    standards = [{"title": title, "file": file, "names": [grade.designation for grade in grades]}
-                 for title, file, grades in standards_of(content)]
+    standards = [
+        {"title": title, "file": file, "names": [grade.designation for grade in grades]}
+        for title, file, grades in standards_of(content)
+    ]
     eras = list(content.knowledge.eras.values())
     used = [e for e in ELEMENTS if any(e in era.typical or e in era.ceilings for era in eras)]
-    return page("steels.html", standards=standards, eras=eras, elements=used, era_cell=era_cell, count=len(content.knowledge.grades))
+    return page(
+        "steels.html",
+        standards=standards,
+        eras=eras,
+        elements=used,
+        era_cell=era_cell,
+        count=len(content.knowledge.grades),
+    )
 
 
 def era_cell(era: Era, element: str) -> str:

@@ -37,7 +37,7 @@ def fahrenheit(celsius: float) -> float:
 
 
 def thermal_cycle(cycle: Cycle) -> str:
-    """The joint's thermal cycle, not to scale in time: welding between preheat and interpass limit, then what follows."""
+    """The joint's thermal cycle, time not to scale: welding between preheat and interpass limit, then what follows."""
     tops = [end for pair in (cycle.preheat, cycle.interpass, cycle.release) if pair for end in pair]
     tops += [end for end in (cycle.treat_low, cycle.treat_high) if end is not None]
     top = max([200.0, *tops]) * 1.12
@@ -100,7 +100,9 @@ def _band(y: Callable[[float], float], start: float, end: float, cycle: Cycle) -
     parts = []
     if cycle.preheat and cycle.interpass and cycle.preheat[1] <= cycle.interpass[0]:
         top, foot = y(cycle.interpass[0]), y(cycle.preheat[1])
-        parts.append(f'<rect class="wb-band" x="{start}" y="{top:.1f}" width="{end - start}" height="{foot - top:.1f}"/>')
+        parts.append(
+            f'<rect class="wb-band" x="{start}" y="{top:.1f}" width="{end - start}" height="{foot - top:.1f}"/>'
+        )
     if cycle.preheat:
         at = y(cycle.preheat[1])
         easy = f" ({cycle.preheat[0]:g} at the easy end)" if cycle.preheat[0] != cycle.preheat[1] else ""
@@ -120,8 +122,10 @@ def _label(x: float, y: float, words: str) -> str:
 
 
 def _svg(title: str, inner: str, width: float, height: float) -> str:
-    return (f'<svg class="wb-picture" role="img" aria-label="{escape(title)}" viewBox="0 0 {width:g} {height:g}" '
-            f'xmlns="http://www.w3.org/2000/svg"><title>{escape(title)}</title>{inner}</svg>')
+    return (
+        f'<svg class="wb-picture" role="img" aria-label="{escape(title)}" viewBox="0 0 {width:g} {height:g}" '
+        f'xmlns="http://www.w3.org/2000/svg"><title>{escape(title)}</title>{inner}</svg>'
+    )
 
 
 def method_strip(candidates: Sequence[tuple[str, Candidate]]) -> str:
@@ -141,14 +145,18 @@ def method_strip(candidates: Sequence[tuple[str, Candidate]]) -> str:
     for tick in range(int(least // 50) * 50, int(most) + 50, 50):
         if least <= tick <= most:
             parts.append(f'<line class="wb-grid" x1="{x(tick):.1f}" x2="{x(tick):.1f}" y1="4" y2="{height - 20:.0f}"/>')
-            parts.append(f'<text class="wb-tick" x="{x(tick):.1f}" y="{height - 6:.0f}" text-anchor="middle">{tick} °C</text>')
+            parts.append(
+                f'<text class="wb-tick" x="{x(tick):.1f}" y="{height - 6:.0f}" text-anchor="middle">{tick} °C</text>'
+            )
     for place, (name, candidate) in enumerate(shown):
         at = row * place + 14
         low, high = candidate.value.low or 0.0, candidate.value.high or 0.0
         style = "wb-dot" if candidate.governs else "wb-dot-hollow"
         parts.append(f'<text class="wb-word" x="{left - 10}" y="{at + 4:.0f}" text-anchor="end">{escape(name)}</text>')
         if high > low:
-            parts.append(f'<line class="{style}-bar" x1="{x(low):.1f}" x2="{x(high):.1f}" y1="{at:.0f}" y2="{at:.0f}"/>')
+            parts.append(
+                f'<line class="{style}-bar" x1="{x(low):.1f}" x2="{x(high):.1f}" y1="{at:.0f}" y2="{at:.0f}"/>'
+            )
         parts.append(f'<circle class="{style}" cx="{x(high):.1f}" cy="{at:.0f}" r="4.5"/>')
         words = f"{low:.0f} to {high:.0f}" if round(low) != round(high) else f"{high:.0f}"
         parts.append(f'<text class="wb-tick" x="{x(high) + 9:.1f}" y="{at + 4:.0f}">{words}</text>')
@@ -161,16 +169,22 @@ def neighbours(title: str, above: Sequence[tuple[str, str]], below: Sequence[tup
     row, width = 24.0, 760.0
     height = rows * row + 16
     middle = height / 2
-    parts = [f'<rect class="wb-box" x="290" y="{middle - 15:.0f}" width="180" height="30" rx="4"/>',
-             f'<text class="wb-word" x="380" y="{middle + 4:.0f}" text-anchor="middle">{escape(_short(title, 28))}</text>']
+    parts = [
+        f'<rect class="wb-box" x="290" y="{middle - 15:.0f}" width="180" height="30" rx="4"/>',
+        f'<text class="wb-word" x="380" y="{middle + 4:.0f}" text-anchor="middle">{escape(_short(title, 28))}</text>',
+    ]
     for side, items in (("above", above), ("below", below)):
         for place, (words, address) in enumerate(items):
             at = middle + (place - (len(items) - 1) / 2) * row
             x, anchor, edge, door = (230, "end", 238, 290) if side == "above" else (530, "start", 470, 522)
-            parts.append(f'<line class="wb-edge" x1="{edge}" x2="{door}" y1="{at if side == "above" else middle:.0f}" '
-                         f'y2="{middle if side == "above" else at:.0f}"/>')
-            parts.append(f'<a href="{escape(address)}"><text class="wb-link" x="{x}" y="{at + 4:.0f}" '
-                         f'text-anchor="{anchor}">{escape(_short(words, 36))}</text></a>')
+            parts.append(
+                f'<line class="wb-edge" x1="{edge}" x2="{door}" y1="{at if side == "above" else middle:.0f}" '
+                f'y2="{middle if side == "above" else at:.0f}"/>'
+            )
+            parts.append(
+                f'<a href="{escape(address)}"><text class="wb-link" x="{x}" y="{at + 4:.0f}" '
+                f'text-anchor="{anchor}">{escape(_short(words, 36))}</text></a>'
+            )
     return _svg(f"What {title} reads and feeds", "".join(parts), width, height)
 
 

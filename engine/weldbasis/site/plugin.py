@@ -50,9 +50,13 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         for decided in self.content.projects:
             folder = f"projects/{decided.project.id}"
             files.append(File.generated(config, f"{folder}/record.json", content=canonical_bytes(decided.record)))
-            files.append(File.generated(config, f"{folder}/joints.csv", content=joints_csv(self.content.knowledge, decided)))
+            files.append(
+                File.generated(config, f"{folder}/joints.csv", content=joints_csv(self.content.knowledge, decided))
+            )
         for path in sorted(p for p in self.assets.rglob("*") if p.is_file()):
-            files.append(File.generated(config, f"assets/{path.relative_to(self.assets).as_posix()}", content=path.read_bytes()))
+            files.append(
+                File.generated(config, f"assets/{path.relative_to(self.assets).as_posix()}", content=path.read_bytes())
+            )
         for uri in _FRAMES.values():
             files.append(File.generated(config, uri, content=_markdown(_TITLE, f"<p>{_BODY}</p>", exclude=True)))
         return files
@@ -60,9 +64,12 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
     def _navigated(self) -> list[tuple[str, str, str]]:
         content = self.content
         pages = [("index.md", "Projects", home_body(content))]
-        pages += [(f"projects/{d.project.id}/index.md", d.project.title, project_body(content, d)) for d in content.projects]
         pages += [
-            ("rules/index.md", "Rules", rules_body(content)), ("steels/index.md", "Steels", steels_body(content)),
+            (f"projects/{d.project.id}/index.md", d.project.title, project_body(content, d)) for d in content.projects
+        ]
+        pages += [
+            ("rules/index.md", "Rules", rules_body(content)),
+            ("steels/index.md", "Steels", steels_body(content)),
             ("sources/index.md", "Sources", sources_body(content)),
             ("vocabulary/index.md", "Vocabulary", vocabulary_body(content)),
         ]
@@ -88,15 +95,25 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         index.write_text(json.dumps(data, ensure_ascii=False, separators=(",", ":")), encoding="utf-8")
 
     def _navigated_names(self) -> list[str]:
-        return ["home", "rules", "steels", "sources", "vocabulary", "how-to-read", "cautions",
-                *[d.project.id for d in self.content.projects]]
+        return [
+            "home",
+            "rules",
+            "steels",
+            "sources",
+            "vocabulary",
+            "how-to-read",
+            "cautions",
+            *[d.project.id for d in self.content.projects],
+        ]
 
     def _rule_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
         governed = self._governed()
         entries = []
         for rule in self.content.knowledge.rules.values():
             body = rule_body(self.content, rule, governed.get(rule.id, []))
-            entries.append(_write(site, f"rules/{rule.id}.html", frame, rule.title, body, f"rule {rule.id}, {rule.topic}"))
+            entries.append(
+                _write(site, f"rules/{rule.id}.html", frame, rule.title, body, f"rule {rule.id}, {rule.topic}")
+            )
         return entries
 
     def _governed(self) -> dict[str, list[tuple[str, list[tuple[str, str]]]]]:
@@ -121,8 +138,10 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         quantities = self.content.knowledge.quantities
         for number, (entry, trace) in enumerate(zip(decided.project.joints, decided.traces, strict=True)):
             body = joint_body(decided.project, entry, self.content.knowledge, trace, digests[entry.id])
-            words = "; ".join(f"{quantities[d.ref.quantity].title} {decision_text(quantities[d.ref.quantity], d)}"
-                              for d in trace.decisions[:2])
+            words = "; ".join(
+                f"{quantities[d.ref.quantity].title} {decision_text(quantities[d.ref.quantity], d)}"
+                for d in trace.decisions[:2]
+            )
             title = f"{entry.id} {entry.title}".strip()
             uri = f"projects/{decided.project.id}/joints/{decided.files[entry.id]}"
             entries.append(_write(site, uri, frame, title, body, f"{', '.join(trace.members[:-1])}. {words}"))
@@ -134,14 +153,15 @@ def _markdown(title: str, body: str, exclude: bool) -> str:
     """A page whose body is finished HTML; the heading stays Markdown so that the theme knows it."""
     search = "search:\n  exclude: true\n" if exclude else ""
     heading = "" if body.lstrip().startswith("<p>" + _BODY) else f"# {title}\n\n"
-    return f"---\ntitle: {json.dumps(title, ensure_ascii=False)}\nhide: [navigation, toc]\n{search}---\n\n{heading}{body}\n"
+    head = f"title: {json.dumps(title, ensure_ascii=False)}\nhide: [navigation, toc]\n{search}"
+    return f"---\n{head}---\n\n{heading}{body}\n"
 
 
 def _write(site: Path, uri: str, frame: str, title: str, body: str, words: str) -> dict[str, str]:
     """Put a body into the frame and write the page; its entry for the search index is returned."""
     head, _, tail = frame.partition(f"<p>{_BODY}</p>")
     plain = escape(title)
-    before = head.replace(f'<h1>{_TITLE}</h1>', "").replace(_TITLE, plain)
+    before = head.replace(f"<h1>{_TITLE}</h1>", "").replace(_TITLE, plain)
     path = site / uri
     path.parent.mkdir(parents=True, exist_ok=True)
     path.write_text(f"{before}{body}{tail.replace(_TITLE, plain)}", encoding="utf-8")

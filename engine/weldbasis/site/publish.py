@@ -63,8 +63,16 @@ def publish(projects: Sequence[Path], to: Path, knowledge: Knowledge, progress: 
 
 def _refuse_foreign(to: Path) -> None:
     if to.exists() and not (to / _MARK).is_file() and (not to.is_dir() or any(to.iterdir())):
-        raise Refused([Problem(Place(str(to)), "this holds something that weldbasis did not make",
-                               "publishing replaces the whole folder", "choose another folder with --to, or empty this one")])
+        raise Refused(
+            [
+                Problem(
+                    Place(str(to)),
+                    "this holds something that weldbasis did not make",
+                    "publishing replaces the whole folder",
+                    "choose another folder with --to, or empty this one",
+                )
+            ]
+        )
 
 
 def _swap(aside: Path, to: Path) -> None:
@@ -87,6 +95,8 @@ def _build(content: Content, folder: Path, progress: Progress) -> int:
     from mkdocs.commands.build import build  # noqa: PLC0415  (after the banner is switched off)
     from mkdocs.config import load_config  # noqa: PLC0415
 
+    from weldbasis.site.plugin import WeldbasisPlugin  # noqa: PLC0415
+
     complaints = _Complaints()
     logger = logging.getLogger("mkdocs")
     logger.addHandler(complaints)
@@ -96,6 +106,7 @@ def _build(content: Content, folder: Path, progress: Progress) -> int:
         config = load_config(str(source / "mkdocs.yml"), site_dir=str(folder))
         config["nav"] = _navigation(content)
         plugin = config.plugins["weldbasis"]
+        assert isinstance(plugin, WeldbasisPlugin)
         plugin.content, plugin.assets, plugin.progress = content, source / "assets", progress
         config.plugins.on_startup(command="build", dirty=False)
         build(config)
@@ -114,7 +125,11 @@ def _build(content: Content, folder: Path, progress: Progress) -> int:
 def _navigation(content: Content) -> list[dict[str, object]]:
     projects = [{d.project.title: f"projects/{d.project.id}/index.md"} for d in content.projects]
     return [
-        {"Projects": ["index.md", *projects]}, {"Rules": "rules/index.md"}, {"Steels": "steels/index.md"},
-        {"Sources": "sources/index.md"}, {"Vocabulary": "vocabulary/index.md"}, {"Reading a trace": "how-to-read.md"},
+        {"Projects": ["index.md", *projects]},
+        {"Rules": "rules/index.md"},
+        {"Steels": "steels/index.md"},
+        {"Sources": "sources/index.md"},
+        {"Vocabulary": "vocabulary/index.md"},
+        {"Reading a trace": "how-to-read.md"},
         {"Cautions": "cautions.md"},
     ]

@@ -14,7 +14,10 @@ from weldbasis.reasons import value_text
 from weldbasis.trace import Value
 
 CHECKED_WORDS = {
-    "seen": "seen in the source", "quoted": "seen quoted", "from-memory": "from memory", "derived": "derived",
+    "seen": "seen in the source",
+    "quoted": "seen quoted",
+    "from-memory": "from memory",
+    "derived": "derived",
     "common-practice": "common practice",
 }
 CAUTION = (
@@ -26,8 +29,11 @@ CAUTION = (
 @cache
 def _environment() -> Environment:
     environment = Environment(
-        loader=FileSystemLoader(site_folder() / "templates"), autoescape=True, undefined=StrictUndefined,
-        trim_blocks=True, lstrip_blocks=True,
+        loader=FileSystemLoader(site_folder() / "templates"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
     )
     environment.globals.update(value=value_html, checked=checked_html, caution=CAUTION)
     return environment
@@ -59,4 +65,6 @@ def _mark(word: str, meaning: str) -> str:
 
 def checked_html(checked: str) -> Markup:
     """How a figure was checked, as a mark."""
-    return Markup(f'<span class="wb-checked wb-checked-{escape(checked)}">{escape(CHECKED_WORDS.get(checked, checked))}</span>')
+    return Markup(
+        f'<span class="wb-checked wb-checked-{escape(checked)}">{escape(CHECKED_WORDS.get(checked, checked))}</span>'
+    )
