@@ -86,7 +86,7 @@ def _hull(formula: Formula, low: Box, high: Box) -> tuple[Floats, Floats, Bools,
     rows = low.shape[1]
     jet = _jet(formula, low, high)
     least, most = np.full(rows, np.nan), np.full(rows, np.nan)
-    exact = np.zeros(rows, np.bool_)
+    exact, whole = np.zeros(rows, np.bool_), jet.defined.copy()
     rising, falling = _signs(formula, jet)
     monotone = (rising | falling).all(axis=0) & jet.defined
     if monotone.any():
@@ -99,10 +99,11 @@ def _hull(formula: Formula, low: Box, high: Box) -> tuple[Floats, Floats, Bools,
     rest = np.flatnonzero(~monotone)
     if len(rest):
         negative = _negative(formula)
-        least[rest], exact_low = _least(formula, low[:, rest], high[:, rest])
-        highest, exact_high = _least(negative, low[:, rest], high[:, rest])
+        least[rest], exact_low, whole_low = _least(formula, low[:, rest], high[:, rest])
+        highest, exact_high, whole_high = _least(negative, low[:, rest], high[:, rest])
         most[rest], exact[rest] = -highest, exact_low & exact_high
-    return least, most, exact & jet.defined, jet.defined & np.isfinite(least)
+        whole[rest] = whole_low | whole_high
+    return least, most, exact & whole, whole & np.isfinite(least)
 
 
 @cache
@@ -127,40 +128,48 @@ def _signs(formula: Formula, jet: Jet) -> tuple[NDArray[np.bool_], NDArray[np.bo
 
 @dataclass(frozen=True)
 class _Pieces:
-    """Pieces still alive in the search for each row's least value: row, box, lower bound, pull along every name."""
+    """Pieces still alive in the search for each row's least value: row, box, lower bound, pull along every name, and
+    whether the formula has a value all over the piece.
+    """
 
     row: Ints
     low: Box
     high: Box
     bound: Floats
     pull: Box
+    whole: Bools
 
     def take(self, keep: Bools | Ints) -> _Pieces:
         """Some of the pieces."""
-        return _Pieces(self.row[keep], self.low[:, keep], self.high[:, keep], self.bound[keep], self.pull[:, keep])
+        boxes = self.low[:, keep], self.high[:, keep]
+        return _Pieces(self.row[keep], *boxes, self.bound[keep], self.pull[:, keep], self.whole[keep])
 
 
-def _least(formula: Formula, low: Box, high: Box) -> tuple[Floats, Bools]:
-    """A value not above the least over each box, and whether it is exact. nan where the formula has no value."""
+def _least(formula: Formula, low: Box, high: Box) -> tuple[Floats, Bools, Bools]:
+    """A value not above the least over each box, whether it is exact, and whether the formula is proved to have a value
+    all over the box. nan where it has none anywhere.
+    """
     rows = low.shape[1]
     best = np.full(rows, np.inf)  # least value seen at a point
     floor = np.full(rows, np.inf)  # least bound of pieces that were given up
-    alive = _Pieces(np.arange(rows), low, high, np.full(rows, -np.inf), np.zeros_like(low))
+    hole = np.zeros(rows, np.bool_)  # a piece without value, or not proved to have one all over, was left
+    alive = _Pieces(np.arange(rows), low, high, np.full(rows, -np.inf), np.zeros_like(low), np.zeros(rows, np.bool_))
     for _ in range(_ROUNDS):
-        alive = _give_up(_look(formula, alive, best), floor, rows)
+        alive = _give_up(_look(formula, alive, best, hole), floor, hole, rows)
         if not len(alive.row):
             break
         alive = _split(alive)
     np.minimum.at(floor, alive.row, alive.bound)
+    hole[alive.row[~alive.whole]] = True
     # A piece that was dropped lies above the best point seen, or within the noise of arithmetic below it.
     result = np.minimum(floor, best)
     exact = floor >= best - _EXACT * np.maximum(1.0, np.abs(best))
     none = ~np.isfinite(result) & ~np.isneginf(result)
-    return np.where(none, np.nan, result), exact & ~none
+    return np.where(none, np.nan, result), exact & ~none, ~hole & ~none
 
 
-def _look(formula: Formula, alive: _Pieces, best: Floats) -> _Pieces:
-    """Bound every piece, update the best points, drop the pieces that cannot matter."""
+def _look(formula: Formula, alive: _Pieces, best: Floats, hole: Bools) -> _Pieces:
+    """Bound every piece, update the best points and the holes, drop the pieces that cannot matter."""
     jet = _jet(formula, alive.low, alive.high)
     rising, falling = _signs(formula, jet)
     whole = jet.defined
@@ -180,11 +189,12 @@ def _look(formula: Formula, alive: _Pieces, best: Floats) -> _Pieces:
     reach = best[alive.row]
     matters = bound < reach - _EXACT * np.maximum(1.0, np.abs(reach))
     keep = ~done & ~np.isnan(bound) & (matters | ~np.isfinite(reach))
+    hole[alive.row[~whole & (~keep | ~np.isfinite(middle))]] = True
     pull = np.where(width > 0, np.where(np.isfinite(pull), pull, 1e300) + 1e-300, -1.0)
-    return _Pieces(alive.row, low, high, bound, pull).take(keep)
+    return _Pieces(alive.row, low, high, bound, pull, whole).take(keep)
 
 
-def _give_up(alive: _Pieces, floor: Floats, rows: int) -> _Pieces:
+def _give_up(alive: _Pieces, floor: Floats, hole: Bools, rows: int) -> _Pieces:
     """Keep the most promising pieces of every row; the bounds of the others stand as the row's floor."""
     if len(alive.row) <= _PIECES:
         return alive
@@ -193,6 +203,7 @@ def _give_up(alive: _Pieces, floor: Floats, rows: int) -> _Pieces:
     rank = np.arange(len(order)) - (np.cumsum(counts) - counts)[alive.row[order]]
     leave = order[rank >= _PIECES]
     np.minimum.at(floor, alive.row[leave], alive.bound[leave])
+    hole[alive.row[leave[~alive.whole[leave]]]] = True
     return alive.take(order[rank < _PIECES])
 
 
@@ -210,4 +221,5 @@ def _split(alive: _Pieces) -> _Pieces:
         np.hstack([left_high, alive.high]),
         np.tile(alive.bound, 2),
         np.tile(alive.pull, 2),
+        np.tile(alive.whole, 2),
     )

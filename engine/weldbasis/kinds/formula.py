@@ -71,15 +71,20 @@ def evaluate_formula(compiled: Compiled, view: View) -> Mapping[str, Column]:
         points = points and highs[read.name] is lows[read.name]
     flags = flags_of(compiled, view)
     if points:
-        low = high = value_at(compiled.body, lows) if lows else np.full(view.rows, value_at(compiled.body, {}))
+        low = value_at(compiled.body, lows) if lows else np.full(view.rows, value_at(compiled.body, {}))
         defined = np.isfinite(low)
+        low = high = np.where(defined, low, np.nan)
     else:
         hull = range_over(compiled.body, lows, highs)
         low, high, defined = hull.low, hull.high, hull.defined
         flags = np.where(hull.exact, flags, flags | WIDE).astype(np.uint8)
     low, high = to_vocabulary(compiled, low, high)
-    some = np.isfinite(low) & np.isfinite(high)
+    some = ~np.isnan(low)
     there = Truth(there.may & some, there.surely & defined & some)
+    if not points:
+        # A hull without an end says nothing; the value is then anything the vocabulary allows.
+        widest = compiled.gives[0].range
+        low, high = np.where(np.isneginf(low), widest.low, low), np.where(np.isposinf(high), widest.high, high)
     return {compiled.gives[0].id: numbers_where(there, low, high, flags)}
 
 

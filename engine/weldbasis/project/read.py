@@ -385,7 +385,10 @@ def _member(reading: _Reading, joint: str, number: int, part: Any, place: Place)
     thickness = own.get("member_thickness")
     if thickness is None or not isinstance(thickness.value, Range):
         return None
-    facts = member_facts(reading.steels[name], thickness.value) | own
+    try:
+        facts = member_facts(reading.steels[name], thickness.value) | own
+    except ValueError:  # what cannot be read in the steel's own entry was noted there
+        return None
     facts["member_role"] = Fact(("parent",), origin)
     facts["member_number"] = Fact(Range(float(number), float(number)), origin)
     return MemberRow(name, facts)
