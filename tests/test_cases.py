@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections import Counter
 
 import pytest
@@ -49,8 +50,6 @@ def test_outside_cases_are_many(knowledge: Knowledge) -> None:
 
 def test_a_wrong_figure_is_noticed(knowledge: Knowledge, graph: KnowledgeGraph) -> None:
     """The runner itself can fail: a case with a changed expectation does."""
-    import dataclasses
-
     case = next(case for case in knowledge.cases if case.rule == "preheat-cet-member")
     wrong = dataclasses.replace(case, expect={"preheat_cet_member": 500})
     broken = dataclasses.replace(knowledge, cases=(wrong,))

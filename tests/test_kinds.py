@@ -47,8 +47,8 @@ def test_governing_numbers_equal_enumeration(candidates: list[tuple[int, int, in
     results: set[int | None] = set()
     for combination in itertools.product(*[choices(candidate) for candidate in candidates]):
         there = [value for value in combination if value is not None]
-        picked = {"highest": max, "lowest": min, "first": lambda values: values[0]}[take]
-        results.add(picked(there) if there else None)
+        ends = {"highest": max(there), "lowest": min(there), "first": there[0]} if there else {}
+        results.add(ends.get(take))
     found = govern_numbers(take, [number_set(*candidate) for candidate in candidates], YES)
     numbers = sorted(value for value in results if value is not None)
     assert bool(found.presence[0] & PRESENT) == bool(numbers)

@@ -94,7 +94,8 @@ def test_open_decisions_say_what_would_settle_them(decided: list[tuple[Project, 
     assert found[0].settles
     texts = [f.text for f in trace_joint(millrace, row).findings if f.level == "hold"]
     assert texts == [
-        "Minimum preheat and interpass temperature is open: 50 to 60 °C. To know Heat input (now 0.9 to 1.4 kJ/mm) settles it."
+        "Minimum preheat and interpass temperature is open: 50 to 60 °C. "
+        "To know Heat input (now 0.9 to 1.4 kJ/mm) settles it."
     ]
 
 

@@ -129,7 +129,7 @@ def test_no_point_escapes_its_box(name: str, knowledge: Knowledge, graph: Knowle
 
 
 def test_most_number_rules_are_tight(knowledge: Knowledge, graph: KnowledgeGraph) -> None:
-    """Nine number rules in ten: on nine boxes in ten the range is proved exact, or equals the sampled hull within 1 %."""
+    """Nine number rules in ten, on nine boxes in ten: the range is proved exact, or is the sampled hull within 1 %."""
     tight: dict[str, bool] = {}
     for name, rule in graph.rules.items():
         if rule.rule.kind not in ("formula", "model"):

@@ -63,7 +63,7 @@ def test_refuses_with_its_reason(text: str | float, unit: str, message: str) -> 
 def test_agrees_with_pint(ours: str, theirs: str, target: str, their_target: str, number: float) -> None:
     """Outside check: pint's own conversion."""
     factor, offset = conversion(ours, target)
-    registry = pint.get_application_registry()
+    registry: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=True)
     expected = registry.Quantity(number, theirs).to(their_target).magnitude
     assert factor * number + offset == pytest.approx(expected, rel=1e-9, abs=1e-6)
 

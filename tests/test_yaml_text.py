@@ -51,7 +51,7 @@ def test_all_problems_of_a_file_come_at_once_with_their_lines() -> None:
 
 
 def test_plain_values_and_their_places() -> None:
-    document = parse_yaml('a: 1\nb: [2.5, "no", {c: true}]\n'.encode(), "f")
+    document = parse_yaml(b'a: 1\nb: [2.5, "no", {c: true}]\n', "f")
     assert document.data == {"a": 1, "b": [2.5, "no", {"c": True}]}
     assert str(document.place("b", 2, "c")) == "f:2:17"
     assert str(document.place("b", 2, "missing")) == "f:2:16"

@@ -72,15 +72,14 @@ def group() -> None:
 def main() -> None:
     """Run the command; bad input ends with its problems on the error stream and exit code 2, never a traceback."""
     try:
-        group.main(standalone_mode=False)
+        code = group.main(standalone_mode=False)
+        sys.exit(code if isinstance(code, int) else 0)
     except Refused as refused:
         for problem in refused.problems:
             click.echo(str(problem), err=True)
         count = len(refused.problems)
         click.echo(f"{count} problem{'s' if count != 1 else ''}; nothing was written.", err=True)
         sys.exit(2)
-    except click.exceptions.Exit as ended:
-        sys.exit(ended.exit_code)
     except click.ClickException as fault:
         fault.show()
         sys.exit(2)

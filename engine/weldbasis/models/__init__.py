@@ -9,7 +9,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Literal
 
-from weldbasis.models.diffusion import hours_to_mean_share
+from weldbasis.models.diffusion import hours_to_centre_share, hours_to_mean_share
 from weldbasis.values import Floats
 
 
@@ -37,26 +37,37 @@ class Model:
     evaluate: Callable[[Mapping[str, Floats], Mapping[str, float]], Floats]
 
 
+_PLATE = {
+    "thickness": Argument("mm", "up"),
+    "temperature": Argument("degC", "down"),
+    "share_left": Argument("", "down"),
+}
+_TWO_BRANCHES = {
+    "d0_low_cm2_s": "cm**2/s",
+    "e_low_j_mol": "J/mol",
+    "d0_high_cm2_s": "cm**2/s",
+    "e_high_j_mol": "J/mol",
+    "gas_constant_j_mol_k": "J/mol/K",
+}
+
 MODELS: Mapping[str, Model] = {
     model.name: model
     for model in (
         Model(
             "plate-diffusion-time",
             "Hours until the mean hydrogen of a uniformly charged plate, open at both faces, has fallen to a share.",
-            {
-                "thickness": Argument("mm", "up"),
-                "temperature": Argument("degC", "down"),
-                "share_left": Argument("", "down"),
-            },
-            {
-                "d0_low_cm2_s": "cm**2/s",
-                "e_low_j_mol": "J/mol",
-                "d0_high_cm2_s": "cm**2/s",
-                "e_high_j_mol": "J/mol",
-                "gas_constant_j_mol_k": "J/mol/K",
-            },
+            _PLATE,
+            _TWO_BRANCHES,
             "h",
             hours_to_mean_share,
+        ),
+        Model(
+            "plate-diffusion-time-centre",
+            "Hours until the middle of a uniformly charged plate, open at both faces, has fallen to a share.",
+            _PLATE,
+            _TWO_BRANCHES,
+            "h",
+            hours_to_centre_share,
         ),
     )
 }

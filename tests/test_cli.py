@@ -1,0 +1,136 @@
+"""The commands as a person runs them: what they print, where they write, how they end."""
+
+from __future__ import annotations
+
+import json
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+from weldbasis.cli.main import COMMANDS
+from weldbasis.places import site_folder
+
+
+def run(*words: str, cwd: Path) -> subprocess.CompletedProcess[str]:
+    return subprocess.run(
+        [sys.executable, "-m", "weldbasis.cli.main", *words],
+        cwd=cwd,
+        capture_output=True,
+        text=True,
+        check=False,
+        timeout=240,
+        encoding="utf-8",
+    )
+
+
+@pytest.fixture(scope="module")
+def started(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    folder = tmp_path_factory.mktemp("work")
+    done = run("start", "quay-crane", "--title", "Quay crane", cwd=folder)
+    assert done.returncode == 0, done.stderr
+    return folder
+
+
+def test_start_makes_a_project_that_decides_at_once(started: Path) -> None:
+    done = run("decide", "quay-crane", cwd=started)
+    assert done.returncode == 0, done.stderr
+    assert "Quay crane" in done.stdout
+    assert "100 °C" in done.stdout
+    assert "Decisions support qualified judgement" in done.stdout
+    assert max(len(line) for line in done.stdout.splitlines() if not line.startswith("Decisions")) <= 80
+    assert "\x1b" not in done.stdout
+    assert (started / "quay-crane" / "record.json").exists()
+
+
+def test_start_never_overwrites(started: Path) -> None:
+    done = run("start", "quay-crane", cwd=started)
+    assert done.returncode == 2
+    assert "this file exists already" in done.stderr
+
+
+def test_replay_agrees_then_names_the_joint_that_was_changed(started: Path) -> None:
+    run("decide", "quay-crane", cwd=started)
+    record = started / "quay-crane" / "record.json"
+    done = run("replay", str(record), cwd=started)
+    assert (done.returncode, "same bytes" in done.stdout) == (0, True)
+    kept = record.read_bytes()
+    data = json.loads(kept)
+    data["joints"][0]["quantities"]["thickness"]["high"] = 31
+    record.write_text(json.dumps(data), encoding="utf-8")
+    done = run("replay", str(record), cwd=started)
+    assert done.returncode == 1
+    assert "joint J1: quantities.thickness.high: the record says 31, now 30.0" in done.stdout
+    record.write_text("{", encoding="utf-8")
+    done = run("replay", str(record), cwd=started)
+    assert done.returncode == 2
+    assert "this is no JSON" in done.stderr
+    record.write_bytes(kept)
+
+
+def test_why_tells_the_chain_and_offers_the_nearest_joint(started: Path) -> None:
+    done = run("why", "quay-crane", "J1", "--decision", "min_preheat", cwd=started)
+    assert done.returncode == 0, done.stderr
+    assert "697 × 0.32 + 160 × tanh(30 / 35)" in done.stdout.replace("\n", " ").replace("  ", " ")
+    assert "[preheat-cet-member]" in done.stdout
+    done = run("why", "quay-crane", "J11", cwd=started)
+    assert done.returncode == 2
+    assert "Did you mean 'J1'?" in done.stderr
+    data = json.loads(run("why", "quay-crane", "J1", "--json", cwd=started).stdout)
+    assert data["format"] == "weldbasis-trace/1"
+
+
+def test_decide_ends_with_1_when_a_finding_stops_work(started: Path) -> None:
+    done = run("decide", str(site_folder() / "projects" / "tideway-gates"), "--no-record", cwd=started)
+    assert done.returncode == 1
+    assert "STOP G21" in done.stdout
+
+
+def test_bad_input_ends_with_2_and_no_traceback(started: Path) -> None:
+    broken = started / "broken"
+    broken.mkdir(exist_ok=True)
+    (broken / "project.yaml").write_text("project: b\ntitle: no\n", encoding="utf-8")
+    for words in (
+        ("decide", "broken"),
+        ("why", "broken", "J1"),
+        ("publish", "broken", "--to", "out"),
+        ("decide", "nowhere"),
+        ("vet", "broken"),
+        ("replay", "broken/project.yaml"),
+        ("deside", "x"),
+    ):
+        done = run(*words, cwd=started)
+        assert done.returncode in (1, 2), words
+        assert done.returncode == (1 if words[0] == "vet" else 2), done.stdout + done.stderr
+        assert "Traceback" not in done.stderr
+
+
+def test_publish_never_takes_a_foreign_folder(started: Path) -> None:
+    foreign = started / "photos"
+    foreign.mkdir(exist_ok=True)
+    (foreign / "bridge.jpg").write_text("x", encoding="utf-8")
+    done = run("publish", "quay-crane", "--to", "photos", cwd=started)
+    assert done.returncode == 2
+    assert "weldbasis did not make" in done.stderr
+    assert (foreign / "bridge.jpg").exists()
+
+
+def test_vet_of_the_published_practice_is_clean(started: Path) -> None:
+    done = run("vet", "--quiet", cwd=started)
+    assert done.returncode == 0, done.stdout
+    assert "0 findings that stop work" in done.stdout
+    data = json.loads(run("vet", "--json", cwd=started).stdout)
+    assert data["counts"]["cases"] == data["counts"]["cases passed"]
+
+
+def test_every_command_teaches(started: Path) -> None:
+    for name in COMMANDS:
+        done = run(name, "--help", cwd=started)
+        assert done.returncode == 0
+        assert len(done.stdout.splitlines()) >= 8
+
+
+def test_readme_names_every_command() -> None:
+    readme = (site_folder().parent / "README.md").read_text(encoding="utf-8")
+    assert all(f"weldbasis {name}" in readme for name in COMMANDS)
