@@ -10,7 +10,7 @@ import pytest
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, quantity_node, rule_node
 from weldbasis.knowledge import Knowledge
-from weldbasis.load.schema import _validator
+from weldbasis.load.schema import validator
 from weldbasis.project import Project, read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes, read_record, record_of, replay, write_aside
@@ -32,7 +32,7 @@ def test_same_bytes_twice_and_schema(decided: list[tuple[Project, Evaluation]], 
         data = canonical_bytes(record)
         assert data == canonical_bytes(record_of(project, evaluate(knowledge, project.facts)))
         assert replay(data, record) == []
-        assert list(_validator("record").iter_errors(json.loads(data))) == []
+        assert list(validator("record").iter_errors(json.loads(data))) == []
         assert read_record(Path("r"), data)["project"] == project.id
 
 

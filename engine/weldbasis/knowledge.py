@@ -10,6 +10,7 @@ from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any, Literal
 
+from weldbasis.meaning import digest_of_meaning
 from weldbasis.problem import Place
 from weldbasis.ranges import Range
 
@@ -243,7 +244,12 @@ class Knowledge:
     eras: Mapping[str, Era]
     consumables: Mapping[str, Consumable]
     cases: tuple[Case, ...]
-    digest: str = ""
+
+    @cached_property
+    def digest(self) -> str:
+        """The digest of all that decides; cases do not."""
+        kinds = ("quantities", "rules", "sources", "grades", "eras", "consumables")
+        return digest_of_meaning({kind: getattr(self, kind) for kind in kinds})
 
     @cached_property
     def decisions(self) -> tuple[Quantity, ...]:

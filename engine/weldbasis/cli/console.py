@@ -39,9 +39,9 @@ def terminal() -> Console:
     return Console(highlight=False, width=80, color_system=None)
 
 
-def knowledge_from(folder: Path | None) -> Knowledge:
-    """The rule set a command works with."""
-    return load_knowledge(folder or kb_folder())
+def knowledge_from(folder: Path | None, with_cases: bool = False) -> Knowledge:
+    """The rule set a command works with; cases only where pages show them."""
+    return load_knowledge(folder or kb_folder(), with_cases)
 
 
 def project_from(folder: Path, knowledge: Knowledge) -> Project:

@@ -30,7 +30,7 @@ def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
     make is never replaced.
     """
     chosen = projects or tuple(sorted(p.parent for p in (site_folder() / "projects").glob("*/project.yaml")))
-    knowledge = knowledge_from(kb)
+    knowledge = knowledge_from(kb, with_cases=True)
     with progress("publishing", 100) as bar:
         task = bar.task_ids[0]
         made = publish(chosen, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total))

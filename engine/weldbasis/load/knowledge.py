@@ -2,14 +2,10 @@
 
 from __future__ import annotations
 
-import dataclasses
-import hashlib
 from collections.abc import Iterator
 from functools import partial
 from pathlib import Path
 from typing import Any
-
-import rfc8785
 
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.records import (
@@ -27,9 +23,6 @@ from weldbasis.load.references import duplicate_problem, reference_problems
 from weldbasis.load.schema import RULE_KINDS, schema_problems
 from weldbasis.load.yaml_text import Document, Path_, read_yaml
 from weldbasis.problem import Place, Problem, Refused, nearest
-
-# What part of a record is its meaning: places, layers and topics only say where it stands.
-_NOT_MEANING = frozenset({"place", "places", "layer", "topic"})
 
 
 class _Reading:
@@ -72,8 +65,11 @@ class _Reading:
         known.setdefault(record.id, record)
 
 
-def load_knowledge(folder: Path) -> Knowledge:
-    """Read a knowledge base. Raises Refused with every problem of every file."""
+def load_knowledge(folder: Path, with_cases: bool = True) -> Knowledge:
+    """Read a knowledge base. Raises Refused with every problem of every file.
+
+    Cases decide nothing; a command that only decides spares reading them.
+    """
     reading = _Reading(folder)
     head = _head(reading, folder / "kb.yaml")
     for document in reading.documents("quantities"):
@@ -91,7 +87,7 @@ def load_knowledge(folder: Path) -> Knowledge:
                     reading.add(kind, make, document, (kind, place))
     for document in reading.documents("consumables"):
         _list(reading, document, "consumables", "consumables", consumable_from)
-    for document in reading.documents("cases"):
+    for document in reading.documents("cases") if with_cases else ():
         _list(reading, document, "cases", "cases", case_from)
     if reading.problems:
         raise Refused(reading.problems)
@@ -165,7 +161,7 @@ def _rules(reading: _Reading, document: Document, layer: str) -> None:
 
 def _assembled(head: dict[str, Any], found: dict[str, dict[str, Any]]) -> Knowledge:
     ordered = {kind: dict(sorted(records.items())) for kind, records in found.items()}
-    knowledge = Knowledge(
+    return Knowledge(
         head["title"],
         head["custodian"],
         str(head["release"]),
@@ -177,27 +173,3 @@ def _assembled(head: dict[str, Any], found: dict[str, dict[str, Any]]) -> Knowle
         ordered["consumables"],
         tuple(ordered["cases"].values()),
     )
-    return dataclasses.replace(knowledge, digest=digest_of_meaning(knowledge))
-
-
-def digest_of_meaning(knowledge: Knowledge) -> str:
-    """The digest of all that decides: comments, layout, order of files and cases do not count."""
-    parts = {
-        kind: {name: meaning_of(record) for name, record in getattr(knowledge, kind).items()}
-        for kind in ("quantities", "rules", "sources", "grades", "eras", "consumables")
-    }
-    return "sha256:" + hashlib.sha256(rfc8785.dumps(parts)).hexdigest()
-
-
-def meaning_of(record: Any) -> Any:
-    """A record as plain data without the fields that only say where it stands."""
-    if dataclasses.is_dataclass(record) and not isinstance(record, type):
-        fields = {field.name: getattr(record, field.name) for field in dataclasses.fields(record)}
-        return {name: meaning_of(value) for name, value in fields.items() if name not in _NOT_MEANING}
-    if isinstance(record, dict):
-        return {str(key): meaning_of(value) for key, value in record.items()}
-    if isinstance(record, list | tuple):
-        return [meaning_of(value) for value in record]
-    if isinstance(record, float) and record in (float("inf"), float("-inf")):
-        return str(record)
-    return record

@@ -3,17 +3,20 @@
 from __future__ import annotations
 
 import json
+import re
 from collections.abc import Iterable, Iterator
 from functools import cache
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from jsonschema import Draft202012Validator
-from jsonschema.exceptions import ValidationError
-from referencing import Registry, Resource
+import jsonschema_rs
 
 from weldbasis.load.yaml_text import Document, Path_
 from weldbasis.places import schema_folder
 from weldbasis.problem import Problem, nearest
+
+if TYPE_CHECKING:
+    from jsonschema import Draft202012Validator
+    from jsonschema.exceptions import ValidationError
 
 _TYPES = {
     "object": "a mapping (key: value)",
@@ -34,24 +37,37 @@ def schema_problems(document: Document, kind: str, path: Path_ = ()) -> list[Pro
     part = document.data
     for step in path:
         part = part[step]
-    errors = _validator(kind).iter_errors(part)
+    if _quick(kind).is_valid(part):
+        return []
+    errors = validator(kind).iter_errors(part)
     problems = [problem for error in errors for problem in _explained(error, document, path)]
     return sorted(dict.fromkeys(problems))
 
 
 @cache
-def _registry() -> Registry[Any]:
-    resources = []
-    for file in sorted(schema_folder().glob("*.json")):
-        schema = json.loads(file.read_text(encoding="utf-8"))
-        resources.append((schema["$id"], Resource.from_contents(schema)))
-    return Registry().with_resources(resources)
+def _schemas() -> dict[str, Any]:
+    files = sorted(schema_folder().glob("*.json"))
+    schemas = [json.loads(file.read_text(encoding="utf-8")) for file in files]
+    return {schema["$id"]: schema for schema in schemas}
 
 
 @cache
-def _validator(kind: str) -> Draft202012Validator:
-    schema = _registry().contents(f"urn:weldbasis:schema:1:{kind}")
-    return Draft202012Validator(schema, registry=_registry())
+def _quick(kind: str) -> jsonschema_rs.Draft202012Validator:
+    """The fast check, which only says yes or no."""
+    registry = jsonschema_rs.Registry(resources=list(_schemas().items()))
+    return jsonschema_rs.Draft202012Validator(_schemas()[f"urn:weldbasis:schema:1:{kind}"], registry=registry)
+
+
+@cache
+def validator(kind: str) -> Draft202012Validator:
+    """The check that can say what is wrong; references are resolved among our own schemas only."""
+    from jsonschema import Draft202012Validator  # noqa: PLC0415  (needed only where something is wrong)
+    from referencing import Registry, Resource  # noqa: PLC0415
+
+    registry: Registry[Any] = Registry().with_resources(
+        (name, Resource.from_contents(schema)) for name, schema in _schemas().items()
+    )
+    return Draft202012Validator(_schemas()[f"urn:weldbasis:schema:1:{kind}"], registry=registry)
 
 
 def _explained(error: ValidationError, document: Document, path: Path_) -> Iterator[Problem]:
@@ -106,10 +122,9 @@ def _unknown_keys(error: ValidationError, document: Document, where: Path_) -> I
     patterns = schema.get("patternProperties", {})
     for pattern in patterns:
         known += [word for word in pattern.strip("^$()").split("|") if word.isalnum()]
-    validator = Draft202012Validator({"patternProperties": dict.fromkeys(patterns, False)})
     instance: Any = error.instance
     for key in instance:
-        if key not in known and not (patterns and not validator.is_valid({key: 0})):
+        if key not in known and not any(re.search(pattern, str(key)) for pattern in patterns):
             yield document.problem((*where, key), f"{key!r} is not known here", "", nearest(str(key), known))
 
 
