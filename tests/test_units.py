@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 from weldbasis.ranges import Range, parse_range
 from weldbasis.units import conversion, is_unit, read_number
 
+PINT: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=True)
 READ = [
     ("1.25 in", "mm", 31.75, 31.75),
     ("250 degF", "degC", 121.111111111, 121.111111111),
@@ -63,8 +64,7 @@ def test_refuses_with_its_reason(text: str | float, unit: str, message: str) -> 
 def test_agrees_with_pint(ours: str, theirs: str, target: str, their_target: str, number: float) -> None:
     """Outside check: pint's own conversion."""
     factor, offset = conversion(ours, target)
-    registry: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=True)
-    expected = registry.Quantity(number, theirs).to(their_target).magnitude
+    expected = PINT.Quantity(number, theirs).to(their_target).magnitude
     assert factor * number + offset == pytest.approx(expected, rel=1e-9, abs=1e-6)
 
 

@@ -13,6 +13,7 @@ from typing import Any, TypeAlias
 
 import yaml
 
+from weldbasis.load.traps import Trap, key_trap, plain_value
 from weldbasis.problem import Place, Problem, Refused
 
 Path_: TypeAlias = tuple[str | int, ...]
@@ -21,16 +22,10 @@ LARGEST_BYTES = 2 * 1024 * 1024
 DEEPEST = 40
 
 _Parser = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
-_INTEGER = re.compile(r"[-+]?(?:0|[1-9]\d*)")
-_REAL = re.compile(r"[-+]?(?:\d+\.\d*|\.\d+|\d+\.?\d*[eE][-+]?\d+|\.\d+[eE][-+]?\d+)")
-_SLIPPERY_REAL = re.compile(r"[-+]?\d+[eE][-+]?\d+|[-+]?\d+\.\d*[eE]\d+")
-_YES_NO = re.compile(r"(?:y|n|yes|no|on|off)", re.IGNORECASE)
-_OTHER_BOOL = re.compile(r"(?:True|TRUE|False|FALSE)")
-_DATE = re.compile(r"\d{4}-\d{1,2}-\d{1,2}(?:[Tt ].*)?")
-_CLOCK = re.compile(r"[-+]?\d+(?::[0-5]?\d)+(?:\.\d*)?")
-_OCTAL = re.compile(r"[-+]?0[\d_]+|0o\d+|0x[0-9a-fA-F]+|0b[01]+")
-_NOT_FINITE = re.compile(r"[-+]?\.(?:inf|Inf|INF)|\.(?:nan|NaN|NAN)")
-_GROUPED = re.compile(r"[-+]?\d+(?:_\d+)+(?:\.\d*)?")
+# Everything YAML takes for the end of a line, so that line numbers here are those of the parser.
+_LINE_END = re.compile("\r\n|[\n\r\x85\u2028\u2029]")
+_UNPRINTABLE = re.compile("[^\t\n\r -~\x85\xa0-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
+_LONGEST_SHOWN = 200
 
 
 @dataclass(frozen=True)
@@ -54,20 +49,21 @@ class Document:
 
     def problem_at(self, place: Place, what: str, why: str = "", do: str = "") -> Problem:
         """A problem at a place of the file, with its line."""
-        text = self.lines[place.line - 1] if 0 < place.line <= len(self.lines) else ""
-        return Problem(place, what, why, do, text)
+        return Problem(place, what, why, do, _line(self.lines, place))
 
 
 def read_yaml(path: Path, shown: str = "") -> Document:
     """Read a file. `shown` is its name in messages. Raises Refused with every problem of the file."""
     name = shown or str(path)
     try:
-        size = path.stat().st_size
+        with path.open("rb") as file:
+            data = file.read(LARGEST_BYTES + 1)
+            size = path.stat().st_size
     except OSError as fault:
         raise Refused(
             [Problem(Place(name), f"cannot be read: {fault.strerror}", do="check the name and the rights")]
         ) from fault
-    if size > LARGEST_BYTES:
+    if len(data) > LARGEST_BYTES:
         raise Refused(
             [
                 Problem(
@@ -78,7 +74,7 @@ def read_yaml(path: Path, shown: str = "") -> Document:
                 )
             ]
         )
-    return parse_yaml(path.read_bytes(), name)
+    return parse_yaml(data, name)
 
 
 def parse_yaml(data: bytes, name: str) -> Document:
@@ -88,8 +84,14 @@ def parse_yaml(data: bytes, name: str) -> Document:
     except UnicodeDecodeError as fault:
         line = data[: fault.start].count(b"\n") + 1
         raise Refused([Problem(Place(name, line), "this is not UTF-8 text", do="save the file as UTF-8")]) from fault
-    reader = _Reader(name, tuple(text.split("\n")))
+    reader = _Reader(name, tuple(_LINE_END.split(text)))
     return reader.document(text)
+
+
+def _line(lines: tuple[str, ...], place: Place) -> str:
+    """The line of a place, or nothing where it is too long to help."""
+    text = lines[place.line - 1] if 0 < place.line <= len(lines) else ""
+    return text if len(text) <= _LONGEST_SHOWN else ""
 
 
 class _Reader:
@@ -104,6 +106,7 @@ class _Reader:
     def document(self, text: str) -> Document:
         """The whole file."""
         data: Any = None
+        self._refuse_unprintable(text)
         try:
             events = yaml.parse(text, Loader=_Parser)
             data = self._top(events)
@@ -116,6 +119,15 @@ class _Reader:
         if self.problems:
             raise Refused(self.problems)
         return Document(self.name, data, self.places, self.lines)
+
+    def _refuse_unprintable(self, text: str) -> None:
+        """Bytes that are no text, such as those of a damaged or a binary file, end the reading."""
+        if match := _UNPRINTABLE.search(text):
+            before = _LINE_END.split(text[: match.start()])
+            place = Place(self.name, len(before), len(before[-1]) + 1)
+            what = f"the character U+{ord(match.group()):04X} cannot stand in a file of text"
+            # The line is not shown: a terminal might obey the character.
+            raise Refused([Problem(place, what, do="take it out, or save the file as UTF-8 text again")])
 
     def _syntax_help(self, place: Place) -> str:
         line = self.lines[place.line - 1] if place.line <= len(self.lines) else ""
@@ -156,20 +168,24 @@ class _Reader:
                 "write the values out",
             )
             return None
-        if event.anchor:
-            self._add(
-                event, f"'&{event.anchor}' names a part for repeating", "aliases are not used here", "take it out"
-            )
-        if event.tag is not None and event.tag != "!":
-            self._add(event, f"the tag {event.tag!r} cannot stand here", "files hold plain data only", "take it out")
+        if event.anchor or event.tag is not None:
+            self._refuse_marks(event)
         if isinstance(event, yaml.ScalarEvent):
-            return self._scalar(event)
+            return self._scalar(event, path)
         if depth >= DEEPEST:
             self._add(event, f"this nests more than {DEEPEST} levels deep", do="flatten it")
             raise Refused(self.problems)
         if isinstance(event, yaml.SequenceStartEvent):
             return self._sequence(events, path, depth)
         return self._mapping(events, path, depth)
+
+    def _refuse_marks(self, event: Any) -> None:
+        if event.anchor:
+            self._add(
+                event, f"'&{event.anchor}' names a part for repeating", "aliases are not used here", "take it out"
+            )
+        if event.tag is not None:
+            self._add(event, f"the tag {event.tag!r} cannot stand here", "files hold plain data only", "take it out")
 
     def _sequence(self, events: Iterator[Any], path: Path_, depth: int) -> list[Any]:
         found: list[Any] = []
@@ -185,7 +201,7 @@ class _Reader:
         for event in events:
             if isinstance(event, yaml.MappingEndEvent):
                 break
-            key = self._key(event, events, path)
+            key = self._key(event, events, path, depth)
             place = self._place(event)
             self.places[(*path, key)] = place
             value = self._value(next(events), events, (*path, key), depth + 1)
@@ -201,36 +217,27 @@ class _Reader:
                 found[key] = value
         return found
 
-    def _key(self, event: Any, events: Iterator[Any], path: Path_) -> str:
+    def _key(self, event: Any, events: Iterator[Any], path: Path_, depth: int) -> str:
         if not isinstance(event, yaml.ScalarEvent):
             self._add(event, "a key must be a plain word", do="write 'key: value'")
-            self._value(event, events, (*path, "?"), 0)
+            self._value(event, events, (*path, "?"), depth + 1)
             return "?"
-        if event.implicit[0] and not event.style:
-            if event.value == "<<":
-                self._add(
-                    event, "'<<' merges another part of the file", "merging hides what a rule says", "write it out"
-                )
-            if _YES_NO.fullmatch(event.value) and len(event.value) > 1:
-                self._add(
-                    event,
-                    f"plain {event.value} is read as true or false by most YAML readers",
-                    do=f'write "{event.value}" in quotes',
-                )
+        if event.anchor or event.tag is not None:
+            self._refuse_marks(event)
+        if event.implicit[0] and not event.style and (trap := key_trap(event.value)):
+            self._add(event, *trap)
         return str(event.value)
 
-    def _scalar(self, event: Any) -> Any:
+    def _scalar(self, event: Any, path: Path_) -> Any:
         word: str = event.value
         if event.style or not event.implicit[0]:
             return word
-        if word in ("true", "false"):
-            return word == "true"
-        if _INTEGER.fullmatch(word):
-            return int(word)
-        if _REAL.fullmatch(word) and not _SLIPPERY_REAL.fullmatch(word):
-            return float(word)
-        if trap := _trap(word):
-            self._add(event, *trap)
+        value = plain_value(word)
+        if not isinstance(value, Trap):
+            return value
+        if path and isinstance(path[-1], int) and not word.strip("~"):
+            value = Trap("nothing stands at this point of the list", value.why, "write the value, or take the '-' out")
+        self._add(event, *value)
         return word
 
     def _place(self, event: Any) -> Place:
@@ -240,45 +247,4 @@ class _Reader:
         self.problems.append(self._problem(self._place(event), what, why, do))
 
     def _problem(self, place: Place, what: str, why: str = "", do: str = "") -> Problem:
-        text = self.lines[place.line - 1] if 0 < place.line <= len(self.lines) else ""
-        return Problem(place, what, why, do, text)
-
-
-def _trap(word: str) -> tuple[str, str, str] | None:
-    """What is treacherous about a plain word, why, and what to write."""
-    quoted = f'write "{word}" in quotes for the text'
-    if word in ("", "~", "null", "Null", "NULL"):
-        return (
-            "nothing stands after this key",
-            "an empty value would be read as null",
-            "write the value, or take the key out",
-        )
-    if _YES_NO.fullmatch(word):
-        return f"plain {word} is read as true or false by most YAML readers", "", f'write "{word}" in quotes'
-    if _OTHER_BOOL.fullmatch(word):
-        return f"{word} is spelled {word.lower()} here", "", f"write {word.lower()}, or {quoted}"
-    if _SLIPPERY_REAL.fullmatch(word):
-        return (
-            f"{word} is a text to some YAML readers and a number to others",
-            "",
-            f"write {float(word)!r} for the number, or {quoted}",
-        )
-    if _DATE.fullmatch(word):
-        return f"{word} is read as a date by most YAML readers", "", quoted
-    if _CLOCK.fullmatch(word):
-        return f"{word} is read as a count of seconds by some YAML readers", "", quoted
-    if _OCTAL.fullmatch(word):
-        return (
-            f"{word} is read to base 8, 16 or 2 by some YAML readers",
-            "",
-            f"write it without the leading 0, or {quoted}",
-        )
-    if _NOT_FINITE.fullmatch(word):
-        return (
-            f"{word} is no number that can be measured",
-            "",
-            "write a range such as '> 38' where there is no upper end",
-        )
-    if _GROUPED.fullmatch(word):
-        return f"{word} is a number to some YAML readers and a text to others", "", "write it without '_'"
-    return None
+        return Problem(place, what, why, do, _line(self.lines, place))

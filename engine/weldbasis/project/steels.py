@@ -36,6 +36,14 @@ ELEMENTS: Mapping[str, str] = {
 }
 
 
+# The elements of each carbon equivalent that a grade may cap.
+_CAPPED: Mapping[str, frozenset[str]] = {
+    "ce_iiw_limit": frozenset({"C", "Mn", "Cr", "Mo", "V", "Ni", "Cu"}),
+    "pcm_limit": frozenset({"C", "Si", "Mn", "Cu", "Cr", "Ni", "Mo", "V", "B"}),
+    "cet_limit": frozenset({"C", "Mn", "Mo", "Cr", "Cu", "Ni"}),
+}
+
+
 @dataclass(frozen=True)
 class Fact:
     """One given value: a closed range, or levels, and its origin."""
@@ -68,6 +76,9 @@ def member_facts(steel: Steel, thickness: Range) -> dict[str, Fact]:
     if composition := steel.written.get("composition"):
         origin = paper_of(steel)
         found |= {ELEMENTS[e]: Fact(read_number(v, "%"), origin) for e, v in composition.items() if e in ELEMENTS}
+        for cap, elements in _CAPPED.items():
+            if elements <= set(composition):
+                found.pop(cap, None)  # a cap bounds what is not analysed; it never trims an analysis
     return found | _own_words(steel)
 
 
@@ -118,6 +129,8 @@ def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
             found[ELEMENTS[element]] = Fact(Range(low, high), origin)
     for quantity, number in (
         ("ce_iiw_limit", limits.ce_iiw),
+        ("ce_iiw_cap", limits.ce_iiw),
+        ("pcm_cap", limits.pcm),
         ("pcm_limit", limits.pcm),
         ("cet_limit", limits.cet),
         ("yield_strength", limits.yield_min),
