@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TypeAlias
 
 import numpy as np
@@ -135,15 +136,22 @@ def joined_flags(columns: Sequence[Column], rows: int) -> Bytes:
     return flags
 
 
+@lru_cache(maxsize=16)
 def absent_numbers(rows: int) -> Numbers:
-    """A column of numbers none of which is there."""
-    nothing = np.full(rows, np.nan)
-    return Numbers(nothing, nothing, np.full(rows, ABSENT), np.zeros(rows, np.uint8))
+    """A column of numbers none of which is there; shared, so it cannot be written to."""
+    nothing, presence, flags = np.full(rows, np.nan), np.full(rows, ABSENT), np.zeros(rows, np.uint8)
+    for array in (nothing, presence, flags):
+        array.setflags(write=False)
+    return Numbers(nothing, nothing, presence, flags)
 
 
+@lru_cache(maxsize=16)
 def absent_levels(rows: int) -> Levels:
-    """A column of levels none of which is there."""
-    return Levels(np.zeros(rows, np.uint64), np.full(rows, ABSENT), np.zeros(rows, np.uint8))
+    """A column of levels none of which is there; shared, so it cannot be written to."""
+    mask, presence, flags = np.zeros(rows, np.uint64), np.full(rows, ABSENT), np.zeros(rows, np.uint8)
+    for array in (mask, presence, flags):
+        array.setflags(write=False)
+    return Levels(mask, presence, flags)
 
 
 def presence_of(there: Truth) -> Bytes:

@@ -16,7 +16,7 @@ _DATE = re.compile(r"[0-9]{4}-[0-9]{1,2}-[0-9]{1,2}(?:(?:[Tt]|\s+).*)?")
 _CLOCK = re.compile(r"[-+]?[0-9]+(?::[0-5]?[0-9])+(?:\.[0-9]*)?")
 _OCTAL = re.compile(r"[-+]?0[0-9_]+|[-+]?0o[0-7]+|[-+]?0x[0-9a-fA-F_]+|[-+]?0b[01_]+")
 _NOT_FINITE = re.compile(r"[-+]?\.(?:inf|Inf|INF)|\.(?:nan|NaN|NAN)")
-_GROUPED = re.compile(r"[-+]?[0-9]+(?:_[0-9]+)+(?:\.[0-9_]*)?")
+_GROUPED = re.compile(r"[-+]?[0-9]+(?:_+[0-9]+)+(?:\.[0-9_]*)?")
 # Whole numbers above this cannot be kept exactly by every reader of the record.
 _LARGEST_INTEGER = 2**53 - 1
 _MOST_DIGITS = 40
@@ -41,7 +41,7 @@ def plain_value(word: str) -> str | int | float | bool | Trap:
         return int(word)
     if _REAL.fullmatch(word) and not _SLIPPERY_REAL.fullmatch(word):
         number = float(word)
-        return number if math.isfinite(number) else Trap("this number is too large to be measured")
+        return number + 0.0 if math.isfinite(number) else Trap("this number is too large to be measured")
     return _trap(word) or word
 
 

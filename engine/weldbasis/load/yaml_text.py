@@ -147,6 +147,8 @@ class _Reader:
                     self._add(event, "a second document starts here", "a file holds one document", "take '---' out")
                     return data
             elif isinstance(event, yaml.NodeEvent):
+                if isinstance(event, yaml.ScalarEvent) and not event.value and not event.style:
+                    continue
                 data = self._value(event, events, (), 0)
                 if not isinstance(event, yaml.MappingStartEvent):
                     self._add(
@@ -224,12 +226,23 @@ class _Reader:
             return "?"
         if event.anchor or event.tag is not None:
             self._refuse_marks(event)
+        if self._escapes(event):
+            return "?"
         if event.implicit[0] and not event.style and (trap := key_trap(event.value)):
             self._add(event, *trap)
         return str(event.value)
 
+    def _escapes(self, event: Any) -> bool:
+        """Whether a quoted text writes by an escape what a file may not hold, such as a command to a terminal."""
+        match = _UNPRINTABLE.search(event.value) if event.style == '"' else None
+        if match:
+            self._add(event, f"the character U+{ord(match.group()):04X} cannot stand in a text", do="take it out")
+        return match is not None
+
     def _scalar(self, event: Any, path: Path_) -> Any:
         word: str = event.value
+        if self._escapes(event):
+            return "?"
         if event.style or not event.implicit[0]:
             return word
         value = plain_value(word)
