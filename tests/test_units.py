@@ -8,7 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from weldbasis.ranges import Range, parse_range
-from weldbasis.units import conversion, is_unit, read_number
+from weldbasis.units import _COMMON, conversion, is_unit, read_number
 
 PINT: pint.UnitRegistry[float] = pint.UnitRegistry(autoconvert_offset_to_baseunit=True)
 READ = [
@@ -25,6 +25,12 @@ READ = [
     ("30 ppm", "%", 0.003, 0.003),
     ("30 cm/min", "mm/min", 300, 300),
     ("0.5", "%", 0.5, 0.5),
+    ("0.9...1.4 kJ/mm", "kJ/mm", 0.9, 1.4),
+    ("25 ipm", "mm/min", 635, 635),
+    ("100 °F/h", "degC/h", 55.5555555556, 55.5555555556),
+    ("12 MM", "mm", 12, 12),
+    ("0.2 wt.%", "%", 0.2, 0.2),
+    ("5 mL/g", "mL/100g", 500, 500),
 ]
 REFUSED = [
     ("5 kg", "mm", "'kg' is a mass; a length in mm is wanted"),
@@ -33,6 +39,13 @@ REFUSED = [
     ("8 to 5 mm", "mm", "'8 to 5 mm' runs downwards; write the lower end first"),
     ("thick", "mm", "'thick' is no number; a number in mm is wanted, with or without its unit, or a range 'a to b'"),
     (True, "mm", "true is no number"),
+    ("10-20 mm", "mm", "'10-20 mm' may mean a range; write '10 to 20 mm'"),
+    ("1 1/4 in", "mm", "'1 1/4 in' has a fraction; write it as a decimal, for example 1.25 in"),
+    ("1 in to 40", "mm", "'1 in to 40' has a unit at its lower end only; write it behind the second number"),
+    ("1e999 mm", "mm", "'1e999 mm' is no number that can be measured"),
+    ("350 HV", "MPa", "'HV' is a hardness; a stress in MPa is wanted"),
+    # A unit is never worked out as arithmetic: this one would take for ever.
+    ("5 9**9**9**9 mm", "mm", "'9**9**9**9 mm' is no unit; write one like mm, kJ/mm, °C, mL/100g, MPa or %"),
 ]
 
 
@@ -66,6 +79,15 @@ def test_agrees_with_pint(ours: str, theirs: str, target: str, their_target: str
     factor, offset = conversion(ours, target)
     expected = PINT.Quantity(number, theirs).to(their_target).magnitude
     assert factor * number + offset == pytest.approx(expected, rel=1e-9, abs=1e-6)
+
+
+@pytest.mark.parametrize("ours", sorted(set(_COMMON) - {"HV", "mL/hg"}))
+def test_own_units_agree_with_pint(ours: str) -> None:
+    """Outside check of every unit kept here so that pint need not be loaded."""
+    first = next(name for name, (kind, factor, _) in _COMMON.items() if kind == _COMMON[ours][0] and factor == 1.0)
+    expected = PINT.Quantity(37.0, ours).to(first).magnitude
+    factor, offset = conversion(ours, first)
+    assert factor * 37.0 + offset == pytest.approx(expected, rel=1e-11, abs=1e-9)
 
 
 def test_known_units() -> None:

@@ -31,6 +31,16 @@ TRAPS = [
     ("", "f:1:1: the file is empty"),
     ("a: 1\n---\nb: 2", "f:2:1: a second document starts here"),
     ("no: 1", "f:1:1: plain no is read as true or false by most YAML readers"),
+    ("a: no\r\nb: 1\r\n", "f:1:4: plain no is read as true or false by most YAML readers"),
+    ("a: 1\u2028b: no", "f:2:4: plain no is read as true or false by most YAML readers"),
+    ("a: ! x", "f:1:4: the tag '!' cannot stand here"),
+    ("!!str a: 1", "f:1:1: the tag 'tag:yaml.org,2002:str' cannot stand here"),
+    ("a: x\x07y", "f:1:5: the character U+0007 cannot stand in a file of text"),
+    ('"\\e": 1', "f:1:1: the character U+001B cannot stand in a text"),
+    ("a: " + "9" * 5000, "f:1:4: this number is too large to be kept exactly"),
+    ("---\n", "f:1:1: the file is empty"),
+    ("~: 1", "f:1:1: a key is empty here"),
+    ("true: 1", "f:1:1: plain true is read as true or false by most YAML readers"),
 ]
 
 
@@ -73,6 +83,22 @@ def test_too_deep_and_too_large(tmp_path: Path) -> None:
     large.write_bytes(b"a: x\n#" + b"x" * LARGEST_BYTES)
     with pytest.raises(Refused, match="at most"):
         read_yaml(large)
+
+
+@pytest.mark.parametrize("text", ["? " * 3000 + "a", "a: " + "{? " * 3000, "- " * 3000, "[" * 100_000])
+def test_depth_is_bounded_however_it_is_written(text: str) -> None:
+    with pytest.raises(Refused):
+        parse_yaml(text.encode(), "f")
+
+
+def test_lines_are_shown_without_their_ends_and_only_where_they_help() -> None:
+    with pytest.raises(Refused) as caught:
+        parse_yaml(b"a: no\r\nb: [" + b"x, " * 100 + b"no]\r\n", "f")
+    assert [problem.line_text for problem in caught.value.problems] == ["a: no", ""]
+
+
+def test_nitrogen_is_a_key() -> None:
+    assert parse_yaml(b"{N: 0.01, Y: 1}", "f").data == {"N": 0.01, "Y": 1}
 
 
 def test_no_yaml_and_no_utf8() -> None:

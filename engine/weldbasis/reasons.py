@@ -13,7 +13,7 @@ from weldbasis.kinds.compiled import gate
 from weldbasis.kinds.condition import failures, judge
 from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
-from weldbasis.settle import Narrowing, settle
+from weldbasis.settle import ANALYSIS, Narrowing, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
 from weldbasis.values import Truth, may_be_at, surely_at
@@ -32,11 +32,12 @@ def trace_joint(
     """
     if narrowings is None:
         narrowings = settle(evaluation, [row])
-    steps = {step.ref: step for step in _steps(evaluation, row)}
+    steps = Steps(evaluation, row)
     decisions = tuple(_decision(quantity, steps) for quantity in evaluation.knowledge.decisions)
     findings = tuple(findings_of(evaluation, row, narrowings))
     names = tuple(evaluation.facts.members[at] for at in _member_rows(evaluation, row))
-    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps)
+    given, gave = _with_values(evaluation, row)
+    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave)
 
 
 def _member_rows(evaluation: Evaluation, row: int) -> range:
@@ -45,15 +46,67 @@ def _member_rows(evaluation: Evaluation, row: int) -> range:
     return range(int(starts[row]), last)
 
 
-def _steps(evaluation: Evaluation, row: int) -> Iterator[Step]:
-    order = evaluation.views["joint"].once("quantities in order", lambda: _quantities_in_order(evaluation))
+class Steps(Mapping[Ref, Step]):
+    """The steps of one joint in the order of the graph, each put into words only when it is asked for."""
+
+    def __init__(self, evaluation: Evaluation, row: int) -> None:
+        self._evaluation = evaluation
+        self._row = row
+        self._members = _member_rows(evaluation, row)
+        self._built: dict[Ref, Step] = {}
+
+    def __getitem__(self, ref: Ref) -> Step:
+        if ref not in self._built:
+            quantity = self._evaluation.knowledge.quantities[ref.quantity]
+            if ref.member > len(self._members) or (ref.member == 0) != (quantity.of == "joint"):
+                raise KeyError(ref)
+            self._built[ref] = _step(self._evaluation, quantity, self._row_of(ref), ref)
+        return self._built[ref]
+
+    def __iter__(self) -> Iterator[Ref]:
+        return iter(refs_in_order(self._evaluation, len(self._members)))
+
+    def __len__(self) -> int:
+        return len(refs_in_order(self._evaluation, len(self._members)))
+
+    def _row_of(self, ref: Ref) -> int:
+        return self._members[ref.member - 1] if ref.member else self._row
+
+
+def values_of(evaluation: Evaluation, row: int) -> Iterator[tuple[Ref, Value]]:
+    """The set of every quantity of one joint, without its reasons."""
     members = _member_rows(evaluation, row)
-    for quantity in order:
+    for ref in refs_in_order(evaluation, len(members)):
+        quantity = evaluation.knowledge.quantities[ref.quantity]
+        at = members[ref.member - 1] if ref.member else row
+        yield ref, value_of(evaluation.columns[ref.quantity], quantity, at)
+
+
+def _with_values(evaluation: Evaluation, row: int) -> tuple[tuple[Ref, ...], tuple[Ref, ...]]:
+    """What was given for one joint, and what rules gave a value."""
+    members = _member_rows(evaluation, row)
+    given, gave = [], []
+    for ref in refs_in_order(evaluation, len(members)):
+        at = members[ref.member - 1] if ref.member else row
+        column = evaluation.facts.given.get(ref.quantity)
+        if column is not None and may_be_at(column, at):
+            given.append(ref)
+        elif may_be_at(evaluation.columns[ref.quantity], at):
+            gave.append(ref)
+    return tuple(given), tuple(gave)
+
+
+def refs_in_order(evaluation: Evaluation, members: int) -> tuple[Ref, ...]:
+    """Every quantity of a joint and of each of its members, in the order in which they are worked out."""
+    return evaluation.views["joint"].once(("refs", members), lambda: tuple(_refs(evaluation, members)))
+
+
+def _refs(evaluation: Evaluation, members: int) -> Iterator[Ref]:
+    for quantity in _quantities_in_order(evaluation):
         if quantity.of == "joint":
-            yield _step(evaluation, quantity, row, Ref(quantity.id))
+            yield Ref(quantity.id)
         else:
-            for number, at in enumerate(members, start=1):
-                yield _step(evaluation, quantity, at, Ref(quantity.id, number))
+            yield from (Ref(quantity.id, number) for number in range(1, members + 1))
 
 
 def _quantities_in_order(evaluation: Evaluation) -> list[Quantity]:
@@ -131,23 +184,26 @@ def judge_once(rule: Compiled, view: View, part: str) -> Truth:
 def say(evaluation: Evaluation, rule: Compiled, value: Value, row: int) -> str:
     """The rule's sentence with this row's values put in; `{result}` is what it gave."""
     view = evaluation.views[rule.rule.for_each]
-    by_name = {read.name: read for read in rule.reads}
+    pieces = view.once(("say", rule.rule.id), lambda: _NAME.split(rule.rule.say))
+    words = [
+        piece if place % 2 == 0 else _word(evaluation, rule, view, piece, value, row)
+        for place, piece in enumerate(pieces)
+    ]
+    return "".join(words)
 
-    def word(match: re.Match[str]) -> str:
-        name = match.group(1)
-        if name == "result" and rule.gives:
-            return value_text(rule.gives[0], value, unit=False)
-        read = by_name.get(name)
-        quantity = read.quantity if read else evaluation.knowledge.quantities.get(name)
-        if quantity is None:
-            return match.group(0)
-        shown = value_of(view.column(quantity.id), quantity, row)
-        if read and read.converts and shown.low is not None and shown.high is not None:
-            low, high = (read.factor * end + read.offset for end in (shown.low, shown.high))
-            return range_text(low, high, quantity.decimals)
-        return value_text(quantity, shown, unit=False)
 
-    return _NAME.sub(word, rule.rule.say)
+def _word(evaluation: Evaluation, rule: Compiled, view: View, name: str, value: Value, row: int) -> str:
+    if name == "result" and rule.gives:
+        return value_text(rule.gives[0], value, unit=False)
+    read = next((read for read in rule.reads if read.name == name), None)
+    quantity = read.quantity if read else evaluation.knowledge.quantities.get(name)
+    if quantity is None:
+        return f"{{{name}}}"
+    shown = value_of(view.column(quantity.id), quantity, row)
+    if read and read.converts and shown.low is not None and shown.high is not None:
+        low, high = (read.factor * end + read.offset for end in (shown.low, shown.high))
+        return range_text(low, high, quantity.decimals)
+    return value_text(quantity, shown, unit=False)
 
 
 def value_text(quantity: Quantity, value: Value, unit: bool = True) -> str:
@@ -249,21 +305,26 @@ def _undecided(
         text = f"{quantity.title} is open: {value_text(quantity, value)}"
         if value.presence == "maybe":
             text += ", or not covered"
-        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, narrowings.get((row, quantity.id), ()))}")
+        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, row, narrowings.get((row, quantity.id), ()))}")
 
 
-def settling_text(evaluation: Evaluation, narrowings: tuple[Narrowing, ...]) -> str:
+def settling_text(evaluation: Evaluation, row: int, narrowings: tuple[Narrowing, ...]) -> str:
     """What would settle a decision, best first."""
     if not narrowings:
-        return "No single input of the project settles it."
-    parts = []
-    for narrowing in narrowings[:4]:
-        quantity = evaluation.knowledge.quantities[narrowing.ref.quantity]
-        whose = f" of member {narrowing.ref.member}" if narrowing.ref.member else ""
-        now = value_text(quantity, narrowing.now)
-        gain = "settles it" if narrowing.settles else f"leaves {narrowing.left}"
-        parts.append(f"{quantity.title.lower() if not quantity.symbol else quantity.title}{whose} (now {now}) {gain}")
-    return "To know " + "; ".join(parts) + "."
+        return "No single input of the project narrows it."
+    return "To know " + "; ".join(_gain(evaluation, row, narrowing) for narrowing in narrowings[:4]) + "."
+
+
+def _gain(evaluation: Evaluation, row: int, narrowing: Narrowing) -> str:
+    gain = "settles it" if narrowing.settles else f"leaves {narrowing.left}"
+    member = narrowing.ref.member
+    name = evaluation.facts.members[_member_rows(evaluation, row)[member - 1]] if member else ""
+    if narrowing.ref.quantity == ANALYSIS:
+        return f"the whole analysis of {name} {gain}"
+    quantity = evaluation.knowledge.quantities[narrowing.ref.quantity]
+    title = quantity.title if quantity.symbol else quantity.title.lower()
+    whose = f" of {name}" if member else ""
+    return f"{title}{whose} (now {value_text(quantity, narrowing.now)}) {gain}"
 
 
 def bears_on_text(evaluation: Evaluation, quantity: str) -> tuple[str, ...]:

@@ -7,7 +7,7 @@ import hashlib
 import json
 import os
 import tempfile
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -18,7 +18,7 @@ from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project
-from weldbasis.reasons import trace_joint
+from weldbasis.reasons import trace_joint, values_of
 from weldbasis.settle import settle
 from weldbasis.trace import JointTrace, Value
 
@@ -42,19 +42,25 @@ def record_of(project: Project, evaluation: Evaluation) -> dict[str, Any]:
     return record_from_traces(project, evaluation, traces)
 
 
-def record_from_traces(project: Project, evaluation: Evaluation, traces: Iterator[JointTrace]) -> dict[str, Any]:
+def record_from_traces(project: Project, evaluation: Evaluation, traces: Iterable[JointTrace]) -> dict[str, Any]:
     """The record from traces that are at hand already, in the order of the joints."""
+    joints = [joint_record(evaluation, row, trace) for row, trace in enumerate(traces)]
+    return record_of_joints(project, evaluation, joints)
+
+
+def record_of_joints(project: Project, evaluation: Evaluation, joints: list[dict[str, Any]]) -> dict[str, Any]:
+    """The record from its joints."""
     return {
         "format": FORMAT,
         "engine": __version__,
         "project": project.id,
         "rules": {"release": project.rules, "digest": evaluation.knowledge.digest},
         "inputs": digest_of(project.meaning),
-        "joints": [joint_record(evaluation, trace) for trace in traces],
+        "joints": joints,
     }
 
 
-def joint_record(evaluation: Evaluation, trace: JointTrace) -> dict[str, Any]:
+def joint_record(evaluation: Evaluation, row: int, trace: JointTrace) -> dict[str, Any]:
     """One joint's part of the record, closed by its own digest."""
     quantities = evaluation.knowledge.quantities
     decisions: dict[str, Any] = {}
@@ -69,11 +75,10 @@ def joint_record(evaluation: Evaluation, trace: JointTrace) -> dict[str, Any]:
         {"member": number, "steel": name, "quantities": {}} for number, name in enumerate(trace.members, start=1)
     ]
     joint: dict[str, Any] = {}
-    for ref, step in trace.steps.items():
-        if step.value.presence == "absent" or ref in decided:
-            continue
-        into = joint if not ref.member else members[ref.member - 1]["quantities"]
-        into[ref.quantity] = set_record(step.value, quantities[ref.quantity])
+    for ref, value in values_of(evaluation, row):
+        if value.presence != "absent" and ref not in decided:
+            into = joint if not ref.member else members[ref.member - 1]["quantities"]
+            into[ref.quantity] = set_record(value, quantities[ref.quantity])
     found = {
         "joint": trace.joint,
         "decisions": decisions,

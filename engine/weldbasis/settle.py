@@ -20,11 +20,16 @@ from weldbasis.values import Column, Levels, Numbers, levels_of
 from weldbasis.words import levels_text, range_text, with_unit
 
 _MOST_LEVELS = 12  # a category wider than this is tried as a whole family of answers too large to be useful
+_FEWEST_ELEMENTS = 2  # an analysis that would tell one element only is that element itself
+ANALYSIS = "analysis"
 
 
 @dataclass(frozen=True)
 class Narrowing:
-    """How far knowing one input would narrow a decision: what is left at worst, and whether that settles it."""
+    """How far knowing one input would narrow a decision: what is left at worst, and whether that settles it.
+
+    `ref` may name `ANALYSIS` in place of a quantity: all elements of a steel known together.
+    """
 
     ref: Ref
     now: Value
@@ -38,7 +43,7 @@ class _Trial:
     joint: int
     ref: Ref
     rows: tuple[int, ...]
-    pinned: float | int
+    pins: tuple[tuple[str, float | int], ...]
 
 
 def settle(evaluation: Evaluation, rows: Sequence[int]) -> Mapping[tuple[int, str], tuple[Narrowing, ...]]:
@@ -90,8 +95,25 @@ def _trials(evaluation: Evaluation, row: int, decisions: Sequence[Quantity]) -> 
         places = [((row,), 0)] if quantity.of == "joint" else _steels(evaluation.facts, first, count)
         for rows, member in places:
             ends = _ends(given[name], quantity, rows[0])
-            found += [_Trial(row, Ref(name, member), rows, end) for end in ends]
+            found += [_Trial(row, Ref(name, member), rows, ((name, end),)) for end in ends]
+    elements = [name for name in names if evaluation.knowledge.quantities[name].topic == "composition"]
+    for rows, member in _steels(evaluation.facts, first, count):
+        found += _analysis(evaluation, row, elements, rows, member)
     return found
+
+
+def _analysis(
+    evaluation: Evaluation, row: int, elements: Sequence[str], rows: tuple[int, ...], member: int
+) -> list[_Trial]:
+    """Two trials of a whole analysis of a steel: every open element at its lower, then at its upper end."""
+    quantities, given = evaluation.knowledge.quantities, evaluation.facts.given
+    ends = {name: _ends(given[name], quantities[name], rows[0]) for name in elements}
+    open_elements = [name for name in elements if ends[name]]
+    if len(open_elements) < _FEWEST_ELEMENTS:
+        return []
+    return [
+        _Trial(row, Ref(ANALYSIS, member), rows, tuple((n, ends[n][side]) for n in open_elements)) for side in (0, 1)
+    ]
 
 
 def _steels(facts: Facts, first: int, count: int) -> list[tuple[tuple[int, ...], int]]:
@@ -129,7 +151,8 @@ def _repeated(evaluation: Evaluation, trials: Sequence[_Trial]) -> Facts:
     for number, trial in enumerate(trials):
         for row in trial.rows:
             at = number if not trial.ref.member else int(offsets[number] + row - starts[number])
-            pins.setdefault(trial.ref.quantity, []).append((at, trial.pinned))
+            for name, value in trial.pins:
+                pins.setdefault(name, []).append((at, value))
     for name, pinned in pins.items():
         given[name] = _pinned(given[name], pinned)
     return Facts(tuple(facts.joints[j] for j in joints), tuple(facts.members[m] for m in members), joint_of, given)
@@ -156,8 +179,10 @@ def _narrowing(
     if share >= 1.0 and not all(state_of(end, decision) != "open" for end in ends):
         return None
     settles = all(state_of(end, decision) == "settled" for end in ends)
-    asked = evaluation.knowledge.quantities[trial.ref.quantity]
-    known = value_of(evaluation.facts.given[asked.id], asked, trial.rows[0])
+    known = Value()
+    if trial.ref.quantity != ANALYSIS:
+        asked = evaluation.knowledge.quantities[trial.ref.quantity]
+        known = value_of(evaluation.facts.given[asked.id], asked, trial.rows[0])
     return Narrowing(trial.ref, known, _left(decision, ends), settles, share)
 
 

@@ -87,10 +87,15 @@ class Finding:
 
 @dataclass(frozen=True)
 class JointTrace:
-    """All reasons of one joint; `steps` in the order of the graph; `members` are the names of its parts."""
+    """All reasons of one joint; `steps` in the order of the graph; `members` are the names of its parts.
+
+    `given` and `gave` name the quantities that the project gave and that rules gave a value, in the same order.
+    """
 
     joint: str
     members: tuple[str, ...]
     decisions: tuple[Decision, ...]
     findings: tuple[Finding, ...]
     steps: Mapping[Ref, Step]
+    given: tuple[Ref, ...] = ()
+    gave: tuple[Ref, ...] = ()

@@ -104,7 +104,8 @@ def mask_of(levels: Sequence[str], order: Sequence[str]) -> int:
     return sum(1 << order.index(level) for level in set(levels))
 
 
-def levels_of(mask: int, order: Sequence[str]) -> tuple[str, ...]:
+@lru_cache(maxsize=1 << 12)
+def levels_of(mask: int, order: tuple[str, ...]) -> tuple[str, ...]:
     """The levels whose bits are set, in the quantity's order."""
     return tuple(level for place, level in enumerate(order) if int(mask) >> place & 1)
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping
+from functools import lru_cache
 
 from weldbasis.knowledge import Quantity
 
@@ -15,6 +16,7 @@ def unit_text(unit: str) -> str:
     return _UNIT_SIGNS.get(unit, unit)
 
 
+@lru_cache(maxsize=1 << 16)
 def number_text(number: float, decimals: int) -> str:
     """A number with at most `decimals` decimals, without trailing zeros, with a true minus sign."""
     if math.isnan(number):

@@ -1,4 +1,4 @@
-/* Sort and filter tables marked wb-sortable; details open for print and for a link into them. Without it pages still read. */
+/* Sort and filter tables marked wb-sortable; details open for a link into them. Without it pages still read. */
 (function () {
   "use strict";
   function key(cell) {
@@ -50,8 +50,5 @@
   }
   document.querySelectorAll("table.wb-sortable").forEach(dress);
   window.addEventListener("hashchange", openTarget);
-  window.addEventListener("beforeprint", function () {
-    document.querySelectorAll(".wb-joint details:not(.wb-trace)").forEach(function (d) { d.open = true; });
-  });
   openTarget();
 })();

@@ -42,7 +42,7 @@ def command(project: Path, record: Path | None, no_record: bool, kb: Path | None
     chosen = project_from(project, knowledge)
     evaluation = evaluate(knowledge, chosen.facts)
     traces = decide_all(evaluation)
-    data = record_from_traces(chosen, evaluation, iter(traces))
+    data = record_from_traces(chosen, evaluation, traces)
     target = record or chosen.folder / "record.json"
     if not no_record:
         write_aside(target, canonical_bytes(data))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -31,6 +32,7 @@ class _Reading:
     def __init__(self, folder: Path) -> None:
         self.folder = folder
         self.problems: list[Problem] = []
+        self.read: dict[str, Document] = {}
         self.found: dict[str, dict[str, Any]] = {
             kind: {} for kind in ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
         }
@@ -39,9 +41,18 @@ class _Reading:
         """Every file below a part of the folder, in order of name."""
         for path in sorted((self.folder / part).rglob("*.yaml")):
             try:
-                yield read_yaml(path, _shown(path))
+                document = read_yaml(path, _shown(path))
             except Refused as refused:
                 self.problems += refused.problems
+            else:
+                self.read[document.file] = document
+                yield document
+
+    def with_line(self, problem: Problem) -> Problem:
+        """A problem found in the records, with the line it stands in."""
+        document = self.read.get(problem.place.file)
+        shown = document.problem_at(problem.place, "").line_text if document else ""
+        return replace(problem, line_text=problem.line_text or shown)
 
     def fits(self, document: Document, kind: str, path: Path_ = ()) -> bool:
         """Whether a part of a document fits its schema; what does not is noted."""
@@ -61,7 +72,8 @@ class _Reading:
             return
         known = self.found[kind]
         if record.id in known:
-            self.problems.append(duplicate_problem(kind, record.id, record.place, known[record.id].place))
+            problem = duplicate_problem(kind, record.id, record.place, known[record.id].place)
+            self.problems.append(self.with_line(problem))
         known.setdefault(record.id, record)
 
 
@@ -80,6 +92,7 @@ def load_knowledge(folder: Path, with_cases: bool = True) -> Knowledge:
     for document in reading.documents("sources"):
         if reading.fits(document, "source"):
             reading.add("sources", source_from, document, ())
+            _named_as_file(reading, document, "source")
     for document in reading.documents("steels"):
         if reading.fits(document, "steels"):
             for kind, make in (("grades", grade_from), ("eras", era_from)):
@@ -93,7 +106,7 @@ def load_knowledge(folder: Path, with_cases: bool = True) -> Knowledge:
         raise Refused(reading.problems)
     knowledge = _assembled(head, reading.found)
     if problems := list(reference_problems(knowledge)):
-        raise Refused(problems)
+        raise Refused(map(reading.with_line, problems))
     return knowledge
 
 
@@ -131,30 +144,52 @@ def _rules(reading: _Reading, document: Document, layer: str) -> None:
     """One rule, or a small family under `rules:`; each is checked against the schema of its own kind."""
     data = document.data
     family = "rules" in data and "id" not in data
-    if family and (extra := sorted(set(data) - {"rules"})):
-        reading.problems.append(
-            document.problem(
-                (extra[0],), f"{extra[0]!r} cannot stand beside rules", do="a family of rules holds only the list rules"
-            )
-        )
-    paths: list[Path_] = [("rules", place) for place in range(len(data["rules"]))] if family else [()]
+    if family:
+        paths = _family(reading, document)
+    else:
+        paths = [()]
+        _named_as_file(reading, document, "rule")
     topic = Path(document.file).parent.name
     for path in paths:
         part = data["rules"][path[1]] if path else data
         kind = part.get("kind") if isinstance(part, dict) else None
-        if kind not in RULE_KINDS:
+        if not isinstance(part, dict) or "kind" not in part:
+            what = "'kind' is missing here" if isinstance(part, dict) else "a rule is a mapping (key: value)"
+            reading.problems.append(
+                document.problem(path, what, f"a rule is one of these kinds: {', '.join(RULE_KINDS)}", "add 'kind: …'")
+            )
+        elif kind not in RULE_KINDS:
             reading.problems.append(
                 document.problem((*path, "kind"), f"{kind!r} is no kind of rule", do=nearest(str(kind), RULE_KINDS))
             )
         elif reading.fits(document, f"rule-{kind}", path):
             reading.add("rules", partial(rule_from, topic=topic, layer=layer), document, path)
-    if not family and isinstance(data.get("id"), str) and Path(document.file).stem != data["id"]:
+
+
+def _family(reading: _Reading, document: Document) -> list[Path_]:
+    """The paths of the rules of a small family; what else stands in its file is noted."""
+    rules = document.data["rules"]
+    for extra in sorted(set(document.data) - {"rules"}):
+        what = f"{extra!r} cannot stand beside rules"
+        reading.problems.append(document.problem((extra,), what, do="a family of rules holds only the list rules"))
+    if not isinstance(rules, list) or not rules:
+        reading.problems.append(
+            document.problem(("rules",), "rules holds no list of rules", do="write one rule behind each '-'")
+        )
+        return []
+    return [("rules", place) for place in range(len(rules))]
+
+
+def _named_as_file(reading: _Reading, document: Document, what: str) -> None:
+    """One record in a file: its id is the file's name."""
+    file, name = Path(document.file), document.data.get("id")
+    if isinstance(name, str) and file.stem != name:
         reading.problems.append(
             document.problem(
                 ("id",),
-                f"the file is called {Path(document.file).name}, its rule {data['id']}",
-                "a rule is found by its file's name",
-                f"call the file {data['id']}.yaml",
+                f"the file is called {file.name}, its {what} {name}",
+                f"a {what} is found by its file's name",
+                f"call the file {name}.yaml",
             )
         )
 

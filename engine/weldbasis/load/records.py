@@ -20,6 +20,7 @@ from weldbasis.knowledge import (
     Source,
 )
 from weldbasis.load.yaml_text import Document, Path_
+from weldbasis.problem import nearest
 from weldbasis.ranges import Range, parse_range
 
 _RULE_PARTS = frozenset(
@@ -44,7 +45,7 @@ _RULE_PARTS = frozenset(
 
 
 class BadRange(ValueError):
-    """A text that should be a range and is none, with its path in the document."""
+    """A text that should be a range, or a level, and is none, with its path in the document."""
 
     def __init__(self, path: Path_, message: str) -> None:
         super().__init__(message)
@@ -64,6 +65,10 @@ def quantity_from(data: Mapping[str, Any], document: Document, path: Path_, topi
     number, levels = data.get("number", {}), data.get("levels", {})
     titles = levels.get("titles", {})
     about = number or levels
+    for name in titles:
+        if name not in levels["order"]:
+            fault = f"{name!r} is no level of {data['id']}. {nearest(name, levels['order'])}"
+            raise BadRange((*path, "levels", "titles", name), fault)
     return Quantity(
         id=data["id"],
         title=data["title"],

@@ -2,16 +2,12 @@
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterator, Mapping
-from typing import Any
+from collections.abc import Iterator
 
 from weldbasis.knowledge import Consumable, Era, Grade, Knowledge, Quantity, Rule
+from weldbasis.load.rule_references import check_value, rule_problems
 from weldbasis.problem import Place, Problem, nearest
-from weldbasis.ranges import parse_range
 from weldbasis.units import is_unit
-
-_NAME = re.compile(r"\{(\w+)\}")
 
 
 def reference_problems(knowledge: Knowledge) -> Iterator[Problem]:
@@ -20,7 +16,7 @@ def reference_problems(knowledge: Knowledge) -> Iterator[Problem]:
         yield from _quantity_problems(quantity, knowledge)
     givers: dict[str, Rule] = {}
     for rule in knowledge.rules.values():
-        yield from _rule_problems(rule, knowledge)
+        yield from rule_problems(rule, knowledge)
         for name in rule.gives:
             if name in givers:
                 other = givers[name]
@@ -31,8 +27,7 @@ def reference_problems(knowledge: Knowledge) -> Iterator[Problem]:
                     "let each give a quantity of its own and bring them together in a governing rule",
                 )
             givers.setdefault(name, rule)
-    records: list[Rule | Grade | Era | Consumable] = [
-        *knowledge.rules.values(),
+    records: list[Grade | Era | Consumable] = [
         *knowledge.grades.values(),
         *knowledge.eras.values(),
         *knowledge.consumables.values(),
@@ -46,7 +41,8 @@ def reference_problems(knowledge: Knowledge) -> Iterator[Problem]:
                     do=nearest(cite.source, knowledge.sources) + " Sources lie in sources/.",
                 )
     yield from _case_problems(knowledge)
-    yield from _steel_problems(knowledge)
+    yield from _level_problems(knowledge)
+    yield from _decision_problems(knowledge)
 
 
 def _quantity_problems(quantity: Quantity, knowledge: Knowledge) -> Iterator[Problem]:
@@ -72,118 +68,31 @@ def _quantity_problems(quantity: Quantity, knowledge: Knowledge) -> Iterator[Pro
             do="add because: …",
         )
     try:
-        _check_value(quantity, default)
+        check_value(quantity, default)
     except ValueError as fault:
         yield Problem(quantity.place, f"if_not_given of {quantity.id}: {fault}")
 
 
-def _check_value(quantity: Quantity, wanted: Any) -> None:
-    """Raises ValueError where a value does not fit the quantity."""
-    if quantity.is_number:
-        if isinstance(wanted, list | tuple):
-            raise ValueError(f"{quantity.id} is a number; a range is wanted, not a list")
-        parse_range(wanted)
-        return
-    for level in wanted if isinstance(wanted, list | tuple) else [wanted]:
-        if level not in quantity.order:
-            raise ValueError(f"{level!r} is no level of {quantity.id}. {nearest(str(level), quantity.order)}")
-
-
-def _rule_problems(rule: Rule, knowledge: Knowledge) -> Iterator[Problem]:
-    def known(name: str, *path: str | int) -> Iterator[Problem]:
-        if name not in knowledge.quantities:
+def _decision_problems(knowledge: Knowledge) -> Iterator[Problem]:
+    """Decisions have places of their own, and parts belong to a decision."""
+    first: dict[int, Quantity] = {}
+    for quantity in knowledge.decisions:
+        other = first.setdefault(quantity.decision, quantity)
+        if other is not quantity:
             yield Problem(
-                rule.place_of(*path),
-                f"rule {rule.id}: {name!r} is no quantity of the vocabulary",
-                do=nearest(name, knowledge.quantities),
+                quantity.place,
+                f"{other.id} and {quantity.id} are both decision {quantity.decision}",
+                f"the other stands in {other.place}",
+                "give one of them another place",
             )
-
-    for name in rule.gives:
-        yield from known(name, "gives")
-    for read in rule.reads:
-        yield from known(read.quantity, "reads", read.name)
-    for name in rule.direction:
-        yield from known(name, "direction", name)
-    for part, condition in (
-        ("applies_when", rule.applies_when),
-        ("valid_within", rule.valid_within),
-        ("where", rule.body.get("where", {})),
-    ):
-        yield from _condition_problems(rule, condition, knowledge, (part,))
-    for part in ("of", "by"):
-        if part in rule.body:
-            yield from known(rule.body[part], part)
-    for place, candidate in enumerate(rule.body.get("candidates", ())):
-        name = candidate if isinstance(candidate, str) else candidate["quantity"]
-        yield from known(name, "candidates", place)
-        if not isinstance(candidate, str):
-            yield from _condition_problems(rule, candidate.get("when", {}), knowledge, ("candidates", place, "when"))
-    for place, name in enumerate(rule.body.get("compare", ())):
-        yield from known(name, "compare", place)
-    yield from _scope_problems(rule, knowledge)
-    yield from _word_problems(rule, knowledge)
-
-
-def _condition_problems(
-    rule: Rule, condition: Mapping[str, Any], knowledge: Knowledge, path: tuple[str | int, ...]
-) -> Iterator[Problem]:
-    for name, wanted in condition.items():
-        if name == "any_of":
-            for place, part in enumerate(wanted):
-                yield from _condition_problems(rule, part, knowledge, (*path, "any_of", place))
-        elif name not in knowledge.quantities:
+    for quantity in knowledge.quantities.values():
+        whole = knowledge.quantities.get(quantity.part_of)
+        if whole and not whole.decision:
             yield Problem(
-                rule.place_of(*path, name),
-                f"rule {rule.id}: {name!r} is no quantity of the vocabulary",
-                do=nearest(name, knowledge.quantities),
+                quantity.place,
+                f"{quantity.id} is part of {whole.id}, which is no decision",
+                do=nearest(whole.id, [decision.id for decision in knowledge.decisions]),
             )
-        elif wanted not in ("present", "absent"):
-            try:
-                _check_value(knowledge.quantities[name], wanted)
-            except ValueError as fault:
-                yield Problem(rule.place_of(*path, name), f"rule {rule.id}, {path[0]}: {fault}")
-
-
-def _scope_problems(rule: Rule, knowledge: Knowledge) -> Iterator[Problem]:
-    """A rule for joints sees joints; gather is the only way up from members."""
-    for name in rule.gives:
-        quantity = knowledge.quantities.get(name)
-        if quantity and quantity.of != rule.for_each:
-            yield Problem(
-                rule.place_of("gives"),
-                f"rule {rule.id} works for each {rule.for_each}, but {name} is of the {quantity.of}",
-                do=f"write for_each: {quantity.of}, or give another quantity",
-            )
-    if rule.for_each == "member":
-        return
-    reads = [(read.quantity, ("reads", read.name)) for read in rule.reads]
-    reads += [(name, (part, name)) for part in ("applies_when", "valid_within") for name in getattr(rule, part)]
-    for name, path in reads:
-        quantity = knowledge.quantities.get(name)
-        if quantity and quantity.of == "member":
-            yield Problem(
-                rule.place_of(*path),
-                f"rule {rule.id} works for each joint and reads {name}, which each member has",
-                do="gather it to the joint first, or write for_each: member",
-            )
-
-
-def _word_problems(rule: Rule, knowledge: Knowledge) -> Iterator[Problem]:
-    names = {read.name for read in rule.reads} | {"result"} | set(knowledge.quantities)
-    for name in _NAME.findall(rule.say):
-        if name not in names:
-            yield Problem(
-                rule.place_of("say"),
-                f"say of rule {rule.id} names {{{name}}}, which the rule does not read",
-                do=nearest(name, names),
-            )
-    latest = rule.changes[-1].version if rule.changes else 0
-    if latest != rule.version:
-        yield Problem(
-            rule.place_of("version"),
-            f"rule {rule.id} is version {rule.version}, its last changes entry is of {latest}",
-            do="write a changes entry for this version",
-        )
 
 
 def _case_problems(knowledge: Knowledge) -> Iterator[Problem]:
@@ -209,23 +118,19 @@ def _case_problems(knowledge: Knowledge) -> Iterator[Problem]:
                 )
 
 
-def _steel_problems(knowledge: Knowledge) -> Iterator[Problem]:
-    family = knowledge.quantities.get("steel_family")
-    records: list[Grade | Era] = [*knowledge.grades.values(), *knowledge.eras.values()]
-    for record in records:
-        if family and record.family not in family.order:
-            yield Problem(
-                record.place,
-                f"{record.id}: {record.family!r} is no level of steel_family",
-                do=nearest(record.family, family.order),
-            )
-    delivery = knowledge.quantities.get("delivery")
+def _level_problems(knowledge: Knowledge) -> Iterator[Problem]:
+    """Words of steels and consumables that must be levels of the vocabulary."""
+    said: list[tuple[Grade | Era | Consumable, str, str]] = []
+    said += [(era, "steel_family", era.family) for era in knowledge.eras.values()]
     for grade in knowledge.grades.values():
-        for level in grade.delivery:
-            if delivery and level not in delivery.order:
-                yield Problem(
-                    grade.place, f"{grade.id}: {level!r} is no level of delivery", do=nearest(level, delivery.order)
-                )
+        said.append((grade, "steel_family", grade.family))
+        said += [(grade, "delivery", level) for level in grade.delivery]
+    for consumable in knowledge.consumables.values():
+        said += [(consumable, "covering", consumable.covering), (consumable, "process", consumable.process)]
+    for part, name, level in said:
+        quantity = knowledge.quantities.get(name)
+        if quantity and level not in quantity.order:
+            yield Problem(part.place, f"{part.id}: {level!r} is no level of {name}", do=nearest(level, quantity.order))
 
 
 def duplicate_problem(kind: str, name: str, place: Place, first: Place) -> Problem:

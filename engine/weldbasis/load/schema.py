@@ -26,6 +26,16 @@ _TYPES = {
     "integer": "a whole number",
     "boolean": "true or false",
 }
+# What the patterns of the schemas ask for, in words.
+_PATTERNS = {
+    "^[A-Za-z][A-Za-z0-9_]*$": "use letters, digits and '_', a letter first",
+    "^[a-z][a-z0-9-]*$": "use small letters, digits and '-', a letter first",
+    "^[a-z0-9][a-z0-9-]*$": "use small letters, digits and '-'",
+    "^[A-Za-z0-9][A-Za-z0-9 ._:+/()-]*$": "use letters, digits and . _ : + / ( ) -, a letter or digit first",
+    r"^\d{4}-\d{2}-\d{2}$": 'write year-month-day in quotes, for example "2026-12-01"',
+    "^sha256:[0-9a-f]{64}$": "a digest is sha256: and 64 digits or letters a to f",
+}
+_FEW = 7
 RULE_KINDS = ("formula", "table", "gather", "governing", "model", "limit")
 
 
@@ -74,17 +84,29 @@ def _explained(error: ValidationError, document: Document, path: Path_) -> Itera
     where: Path_ = (*path, *error.absolute_path)
     if error.validator in ("oneOf", "anyOf") and error.context:
         yield from _best_branch(error, document, path)
+    elif error.validator == "oneOf":
+        yield from _both_ways(error, document, where)
     elif error.validator == "additionalProperties":
         yield from _unknown_keys(error, document, where)
     elif error.validator == "required":
         wanted: Any = error.validator_value
         present: Any = error.instance
         missing = [name for name in wanted if name not in present]
-        for name in missing[:1] if error.parent is not None else missing:
+        for name in missing:
             yield document.problem(where, f"{name!r} is missing here", _description(error, name), f"add '{name}: …'")
     else:
         what, do = _plain(error)
         yield document.problem(where, what, _own_description(error), do)
+
+
+def _both_ways(error: ValidationError, document: Document, where: Path_) -> Iterator[Problem]:
+    """Two ways to write a thing that stand beside each other; what is no mapping is spoken of elsewhere."""
+    branches: Any = error.validator_value
+    written: Any = error.instance
+    if isinstance(written, dict):
+        names = [name for branch in branches for name in branch.get("required", ()) if name in written]
+        words = " and ".join(map(repr, names)) or "two ways to write it"
+        yield document.problem(where, f"{words} cannot stand together here", do="keep the one that fits")
 
 
 def _best_branch(error: ValidationError, document: Document, path: Path_) -> Iterator[Problem]:
@@ -133,13 +155,14 @@ def _plain(error: ValidationError) -> tuple[str, str]:
     wanted: Any = error.validator_value
     match error.validator:
         case "type":
-            return f"{value} stands where {_type_words(wanted)} is wanted", ""
+            return f"{value} stands where {_type_words(wanted)} is wanted", _quoting(error.instance, wanted)
         case "enum":
-            return f"{value} is not one of the words known here", nearest(str(error.instance), map(str, wanted))
+            return f"{value} is not one of the words known here", _choices(str(error.instance), wanted)
         case "const":
             return f"{value} stands where {wanted!r} is wanted", f"write {wanted}"
         case "pattern":
-            return f"{value} is not written as expected here", f"it must fit the pattern {wanted}"
+            words = _PATTERNS.get(wanted, f"it must fit the pattern {wanted}")
+            return f"{value} is not written as expected here", words
         case "minLength" | "minItems" | "minProperties":
             return "this is empty, or holds too little", f"at least {wanted} wanted"
         case "maxItems":
@@ -152,6 +175,23 @@ def _plain(error: ValidationError) -> tuple[str, str]:
             return f"{value} is above the greatest value {wanted}", ""
         case _:
             return f"{value} does not fit here", ""
+
+
+def _quoting(value: Any, wanted: str | list[str]) -> str:
+    """What to do where quotes alone make the difference between a text and a number."""
+    number = isinstance(value, int | float) and not isinstance(value, bool)
+    if number and "string" in wanted:
+        return f'write "{value}" in quotes'
+    if isinstance(value, str) and wanted in ("number", "integer") and re.fullmatch(r"-?[0-9.]+", value):
+        return f"write {value} without quotes"
+    return ""
+
+
+def _choices(word: str, known: list[str]) -> str:
+    """The nearest of the words, and all of them where they are few."""
+    found = nearest(word, known)
+    few = len(known) <= _FEW and found.startswith("Did")
+    return f"{found} Known: {', '.join(known)}." if few else found
 
 
 def _type_words(wanted: str | Iterable[str]) -> str:

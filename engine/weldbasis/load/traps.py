@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from functools import lru_cache
 from typing import NamedTuple
 
 _INTEGER = re.compile(r"[-+]?(?:0|[1-9][0-9]*)")
@@ -31,6 +32,7 @@ class Trap(NamedTuple):
     do: str = ""
 
 
+@lru_cache(maxsize=4096)  # a knowledge base says the same words over and over
 def plain_value(word: str) -> str | int | float | bool | Trap:
     """The value of an unquoted word: true or false, a number or the text itself; or the trap it is."""
     if word in ("true", "false"):
@@ -45,6 +47,7 @@ def plain_value(word: str) -> str | int | float | bool | Trap:
     return _trap(word) or word
 
 
+@lru_cache(maxsize=4096)
 def key_trap(word: str) -> Trap | None:
     """The trap an unquoted key is; single letters pass, for N is nitrogen."""
     if word in _NOTHING:

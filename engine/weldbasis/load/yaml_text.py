@@ -161,7 +161,8 @@ class _Reader:
         return data
 
     def _value(self, event: Any, events: Iterator[Any], path: Path_, depth: int) -> Any:
-        self.places.setdefault(path, self._place(event))
+        if path not in self.places:
+            self.places[path] = self._place(event)
         if isinstance(event, yaml.AliasEvent):
             self._add(
                 event,
@@ -226,7 +227,7 @@ class _Reader:
             return "?"
         if event.anchor or event.tag is not None:
             self._refuse_marks(event)
-        if self._escapes(event):
+        if event.style == '"' and self._escapes(event):
             return "?"
         if event.implicit[0] and not event.style and (trap := key_trap(event.value)):
             self._add(event, *trap)
@@ -234,14 +235,14 @@ class _Reader:
 
     def _escapes(self, event: Any) -> bool:
         """Whether a quoted text writes by an escape what a file may not hold, such as a command to a terminal."""
-        match = _UNPRINTABLE.search(event.value) if event.style == '"' else None
+        match = _UNPRINTABLE.search(event.value)
         if match:
             self._add(event, f"the character U+{ord(match.group()):04X} cannot stand in a text", do="take it out")
         return match is not None
 
     def _scalar(self, event: Any, path: Path_) -> Any:
         word: str = event.value
-        if self._escapes(event):
+        if event.style == '"' and self._escapes(event):
             return "?"
         if event.style or not event.implicit[0]:
             return word

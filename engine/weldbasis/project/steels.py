@@ -88,7 +88,7 @@ def _own_words(steel: Steel) -> dict[str, Fact]:
     found: dict[str, Fact] = {}
     if "yield_strength" in steel.written:
         found["yield_strength"] = Fact(read_number(steel.written["yield_strength"], "MPa"), origin, assumed)
-    for field, quantity in (("delivery", "delivery"), ("family", "steel_family")):
+    for field, quantity in (("delivery", "delivery"), ("family", "steel_family"), ("sample_place", "sample_place")):
         if field in steel.written:
             value = steel.written[field]
             levels = tuple(value) if isinstance(value, list | tuple) else (str(value),)
@@ -143,7 +143,7 @@ def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
 
 def _from_era(steel: Steel, era: Era) -> dict[str, Fact]:
     origin = Origin("era-envelope", f"envelope of {era.title}, {era.years}", steel.place)
-    found = {"steel_family": Fact((era.family,), origin)}
+    found = {"steel_family": Fact((era.family,), origin), "steel_era": Fact((era.id,), origin)}
     for element, quantity in ELEMENTS.items():
         typical, ceiling = era.typical.get(element), era.ceilings.get(element)
         if typical or ceiling is not None:
@@ -159,7 +159,7 @@ def _from_samples(steel: Steel, samples: Sequence[Mapping[str, Any]]) -> dict[st
     text = f"{len(samples)} sample{'s' if len(samples) > 1 else ''}"
     text += ", joined with the era's typical range" if few else ", least to greatest"
     origin = Origin("samples", text, steel.place)
-    found = {}
+    found: dict[str, Fact] = {"sample_count": Fact(Range(float(len(samples)), float(len(samples))), origin)}
     for element, quantity in ELEMENTS.items():
         values = [read_number(sample[element], "%") for sample in samples if element in sample]
         if not values:

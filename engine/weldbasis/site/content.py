@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import dataclasses
 import io
 import re
 from collections import Counter
@@ -11,13 +12,14 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from weldbasis.evaluate import evaluate
+from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
 from weldbasis.project import Project, read_project
 from weldbasis.reasons import trace_joint
-from weldbasis.record import record_from_traces
-from weldbasis.settle import settle
+from weldbasis.record import joint_record, record_of_joints
+from weldbasis.settle import Narrowing, settle
+from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text
 
@@ -26,9 +28,11 @@ Progress = Callable[[int, int], object]
 
 @dataclass(frozen=True)
 class Decided:
-    """A project with everything its pages show."""
+    """A project with everything its pages show; `traces` hold no steps, which are read again page by page."""
 
     project: Project
+    evaluation: Evaluation
+    narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
     traces: tuple[JointTrace, ...]
     record: Mapping[str, Any]
     files: Mapping[str, str]
@@ -49,32 +53,29 @@ def decide_projects(folders: Sequence[Path], knowledge: Knowledge, progress: Pro
     """Read and decide every project. Raises Refused with what is wrong in any of them."""
     graph = build_graph(knowledge)
     projects = [read_project(folder, knowledge) for folder in folders]
-    total = sum(len(project.joints) for project in projects)
-    done = 0
-    decided = []
-    for project in projects:
-        evaluation = evaluate(knowledge, project.facts, graph)
-        count = len(project.joints)
-        narrowings = settle(evaluation, range(count))
-        traces = []
-        for row in range(count):
-            traces.append(trace_joint(evaluation, row, narrowings))
-            done += 1
-            progress(done, 2 * total)
-        record = record_from_traces(project, evaluation, iter(traces))
-        decided.append(_decided(knowledge, project, tuple(traces), record))
-    return Content(knowledge, graph, tuple(decided))
+    return Content(knowledge, graph, tuple(decide_project(project, knowledge, graph, progress) for project in projects))
 
 
-def _decided(
-    knowledge: Knowledge, project: Project, traces: tuple[JointTrace, ...], record: Mapping[str, Any]
-) -> Decided:
+def decide_project(project: Project, knowledge: Knowledge, graph: KnowledgeGraph, progress: Progress) -> Decided:
+    """Decide one project: decisions, findings and record of every joint."""
+    evaluation = evaluate(knowledge, project.facts, graph)
+    count = len(project.joints)
+    narrowings = settle(evaluation, range(count))
+
+    def decide(row: int) -> tuple[JointTrace, dict[str, Any]]:
+        trace = trace_joint(evaluation, row, narrowings)
+        return dataclasses.replace(trace, steps={}), joint_record(evaluation, row, trace)
+
+    found = each_row(decide, count, lambda done: progress(done, 2 * count))
+    traces = tuple(trace for trace, _ in found)
+    record = record_of_joints(project, evaluation, [joint for _, joint in found])
     states = Counter(
         d.state for trace in traces for d in trace.decisions if not knowledge.quantities[d.ref.quantity].part_of
     )
     counts = {state: states[state] for state in ("settled", "open", "uncovered")}
     stopped = tuple(trace.joint for trace in traces if any(f.level == "stop" for f in trace.findings))
-    return Decided(project, traces, record, file_names([trace.joint for trace in traces]), counts, stopped)
+    files = file_names([trace.joint for trace in traces])
+    return Decided(project, evaluation, narrowings, traces, record, files, counts, stopped)
 
 
 def file_names(joints: Sequence[str]) -> dict[str, str]:

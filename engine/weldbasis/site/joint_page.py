@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from html import escape
+
+from markupsafe import Markup
 
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.project import JointEntry, Project
 from weldbasis.reasons import value_text
 from weldbasis.site.pictures import Cycle, method_strip, thermal_cycle
-from weldbasis.site.render import page
+from weldbasis.site.render import page, value_html
 from weldbasis.trace import Candidate, Decision, JointTrace, Ref, Step
 
 
@@ -26,9 +29,8 @@ class Sentence:
 
 @dataclass(frozen=True)
 class Line:
-    """A step as the page shows it: how deep in the chain, its quantity, its sources."""
+    """An input as the page shows it: its step, its quantity and whose it is."""
 
-    depth: int
     step: Step
     quantity: Quantity
     member: str
@@ -55,15 +57,16 @@ def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace:
         methods=methods_of(knowledge, trace),
         strip=_strip(knowledge, trace),
         given=given_lines(knowledge, trace),
-        lines=[_line(knowledge, trace, 0, s) for s in trace.steps.values() if s.state in ("gave", "withheld")],
+        steps=len(trace.gave),
+        rows=Markup("".join(_trace_row(knowledge, trace, ref) for ref in trace.gave)),
         why_none=lambda step: withheld_reasons(trace, step),
     )
 
 
-def _line(knowledge: Knowledge, trace: JointTrace, depth: int, step: Step) -> Line:
+def _line(knowledge: Knowledge, trace: JointTrace, step: Step) -> Line:
     member = trace.members[step.ref.member - 1] if step.ref.member else ""
     number = f"{step.ref.member}: " if step.ref.member else ""
-    return Line(depth, step, knowledge.quantities[step.ref.quantity], f"{number}{member}" if member else "")
+    return Line(step, knowledge.quantities[step.ref.quantity], f"{number}{member}" if member else "")
 
 
 def chain_lines(knowledge: Knowledge, trace: JointTrace, decision: Decision) -> list[Sentence]:
@@ -121,12 +124,20 @@ def _inputs_sentence(knowledge: Knowledge, trace: JointTrace, inputs: list[Step]
 
 def given_lines(knowledge: Knowledge, trace: JointTrace) -> list[Line]:
     """What was given, joint first, then part by part."""
-    lines = [
-        _line(knowledge, trace, 0, s)
-        for s in trace.steps.values()
-        if s.state == "given" and not s.ref.quantity.startswith("contract_")
-    ]
-    return sorted(lines, key=lambda line: line.step.ref.member)
+    refs = [ref for ref in trace.given if not ref.quantity.startswith("contract_") and ref.quantity not in _PLAIN]
+    return [_line(knowledge, trace, trace.steps[ref]) for ref in sorted(refs, key=lambda ref: ref.member)]
+
+
+def _trace_row(knowledge: Knowledge, trace: JointTrace, ref: Ref) -> str:
+    """A row of the whole trace, put together here because there are hundreds on every page."""
+    step, quantity = trace.steps[ref], knowledge.quantities[ref.quantity]
+    who = f'<br><span class="wb-who">{escape(_who(trace, ref))}</span>' if ref.member else ""
+    figures = f'<span class="wb-figures">{escape(step.figures)}</span>' if step.figures else ""
+    rule = f'<a class="wb-rule" href="../../../rules/{step.rule}.html">{step.rule}</a>'
+    return (
+        f"<tr><td>{escape(quantity.title)}{who}</td><td>{value_html(quantity, step.value)}</td>"
+        f"<td>{escape(step.sentence)} {rule}{figures}</td></tr>\n"
+    )
 
 
 def methods_of(knowledge: Knowledge, trace: JointTrace) -> list[tuple[Quantity, Candidate, Step]]:

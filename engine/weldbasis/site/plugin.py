@@ -14,6 +14,8 @@ from mkdocs.config.defaults import MkDocsConfig
 from mkdocs.plugins import BasePlugin, event_priority
 from mkdocs.structure.files import File, Files
 
+from weldbasis.knowledge import Knowledge
+from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes
 from weldbasis.site.content import Content, Decided, Progress, joints_csv
 from weldbasis.site.joint_page import joint_body
@@ -28,6 +30,8 @@ from weldbasis.site.pages import (
     steels_body,
     vocabulary_body,
 )
+from weldbasis.site.workers import each_row
+from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text
 
 _TITLE, _BODY = "WBTITLEWB", "WBBODYWB"
@@ -133,20 +137,24 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         return entries
 
     def _joint_pages(self, site: Path, frame: str, decided: Decided) -> list[dict[str, str]]:
-        entries = []
-        digests = {joint["joint"]: joint["digest"] for joint in decided.record["joints"]}
-        quantities = self.content.knowledge.quantities
-        for number, (entry, trace) in enumerate(zip(decided.project.joints, decided.traces, strict=True)):
-            body = joint_body(decided.project, entry, self.content.knowledge, trace, digests[entry.id])
-            words = "; ".join(
-                f"{quantities[d.ref.quantity].title} {decision_text(quantities[d.ref.quantity], d)}"
-                for d in trace.decisions[:2]
-            )
-            title = f"{entry.id} {entry.title}".strip()
+        digests = [joint["digest"] for joint in decided.record["joints"]]
+        knowledge, count = self.content.knowledge, len(decided.traces)
+
+        def write(row: int) -> dict[str, str]:
+            entry = decided.project.joints[row]
+            trace = trace_joint(decided.evaluation, row, decided.narrowings)
+            body = joint_body(decided.project, entry, knowledge, trace, digests[row])
             uri = f"projects/{decided.project.id}/joints/{decided.files[entry.id]}"
-            entries.append(_write(site, uri, frame, title, body, f"{', '.join(trace.members[:-1])}. {words}"))
-            self.progress(number + 1 + len(decided.traces), 2 * len(decided.traces))
-        return entries
+            words = f"{', '.join(trace.members[:-1])}. {_summary(knowledge, trace)}"
+            return _write(site, uri, frame, f"{entry.id} {entry.title}".strip(), body, words)
+
+        return each_row(write, count, lambda done: self.progress(count + done, 2 * count))
+
+
+def _summary(knowledge: Knowledge, trace: JointTrace) -> str:
+    """The first decisions in one line, for the search."""
+    shown = [(knowledge.quantities[d.ref.quantity], d) for d in trace.decisions[:2]]
+    return "; ".join(f"{quantity.title} {decision_text(quantity, decision)}" for quantity, decision in shown)
 
 
 def _markdown(title: str, body: str, exclude: bool) -> str:
