@@ -1,9 +1,9 @@
 """Decide 100,000 generated joints, against a hand-written NumPy script of the same formulas, in one process.
 
-Run: python tests/bench/evaluate.py [joints]. Prints seconds of both (best of five) and their ratio; the goal is a ratio of
-at most 5. What is compared: the CET method inside and at its limits, hydrogen control, Ito and Bessyo, Suzuki, CEN and
-Seferian, with all carbon equivalents, restraint, hydrogen scales and validity limits. Both must agree before they are timed,
-so this is an independent calculation of the six methods too.
+Run: python tests/bench/evaluate.py [joints]. Prints seconds of both (best of five) and their ratio; the goal is at
+most 5. What is compared: the CET method inside and at its limits, hydrogen control, Ito and Bessyo, Suzuki, CEN and
+Seferian, with all carbon equivalents, restraint, hydrogen scales and validity limits. Both must agree before they are
+timed, so this is an independent calculation of the six methods too.
 """
 
 from __future__ import annotations

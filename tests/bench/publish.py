@@ -1,7 +1,7 @@
-"""Publish 1,000 joints, against mkdocs with the same theme building as many plain pages of 3 kB, one after the other.
+"""Publish 1,000 joints, against mkdocs with the same theme building as many plain pages of 3 kB.
 
-Run: python tests/bench/publish.py [joints]. Prints seconds of both, their ratio (goal at most 0.5) and the peak memory of
-publishing (goal at most 1 GiB). Each runs in a process of its own, so that neither warms the other up.
+Run: python tests/bench/publish.py [joints]. Prints seconds of both, their ratio (goal at most 0.5) and the peak memory
+of publishing (goal at most 1 GiB). Each runs in a process of its own, so that neither warms the other up.
 """
 
 from __future__ import annotations
@@ -29,7 +29,7 @@ extra: {polyfills: [iframe-worker-none.js], generator: false}
 
 
 def make_project(folder: Path, joints: int) -> None:
-    """The fabrication example with its weld list repeated, each joint with a thickness of its own."""
+    """The fabrication example with its weld list repeated under new names."""
     source = site_folder() / "projects" / "tideway-gates"
     text = (source / "project.yaml").read_text(encoding="utf-8")
     (folder / "project.yaml").write_text(text, encoding="utf-8")

@@ -1,7 +1,7 @@
 """`weldbasis why` on one joint from a cold start, and `weldbasis vet` on the whole knowledge base.
 
-Run: python tests/bench/start_up.py. Prints the best of five in seconds beside the start of a bare interpreter with NumPy
-in the same run; goals are 1.0 s and 5 s.
+Run: python tests/bench/start_up.py. Prints the best of five in seconds beside the start of a bare interpreter with
+NumPy in the same run; goals are 1.0 s and 5 s.
 """
 
 from __future__ import annotations
