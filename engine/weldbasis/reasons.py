@@ -34,7 +34,8 @@ def trace_joint(
         narrowings = settle(evaluation, [row])
     steps = Steps(evaluation, row)
     decisions = tuple(_decision(quantity, steps) for quantity in evaluation.knowledge.decisions)
-    findings = tuple(findings_of(evaluation, row, narrowings))
+    # Two parts may say the same of the joint; it counts once.
+    findings = tuple(dict.fromkeys(findings_of(evaluation, row, narrowings)))
     names = tuple(evaluation.facts.members[at] for at in _member_rows(evaluation, row))
     given, gave = _with_values(evaluation, row)
     return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave)

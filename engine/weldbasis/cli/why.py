@@ -7,11 +7,12 @@ import json
 from pathlib import Path
 
 import click
+from rich.padding import Padding
 
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, knowledge_from, project_from, terminal
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.problem import nearest
-from weldbasis.reasons import trace_joint, value_text
+from weldbasis.reasons import bears_on_text, trace_joint, value_text
 from weldbasis.trace import Decision, JointTrace, Ref, Step
 from weldbasis.views import decision_text
 
@@ -55,9 +56,11 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
     if wanted and wanted not in {decision.ref.quantity for decision in trace.decisions}:
         for ref, step in trace.steps.items():
             if ref.quantity == wanted:
-                _show_step(evaluation, step, 0)
-    for finding in trace.findings:
-        console.print(f"[bold]{finding.level}[/bold] {finding.text} [dim]\\[{finding.rule}][/dim]", soft_wrap=False)
+                _show_step(evaluation, step, 0, full=True)
+        console.print(Padding("Bears on: " + (", ".join(bears_on_text(evaluation, wanted)) or "no decision"), (1, 0)))
+    if not wanted:
+        for finding in trace.findings:
+            console.print(f"[bold]{finding.level}[/bold] {_plain(finding.text)} [dim]\\[{finding.rule}][/dim]")
     click.echo(CAUTION)
 
 
@@ -84,7 +87,7 @@ def _show_decision(evaluation: Evaluation, trace: JointTrace, decision: Decision
     for ref in decision.chain:
         step = trace.steps[ref]
         if full or step.state != "given" or depths[ref] <= 2:
-            _show_step(evaluation, step, depths[ref])
+            _show_step(evaluation, step, depths[ref], full)
 
 
 def _depths(trace: JointTrace, decision: Decision) -> dict[Ref, int]:
@@ -95,9 +98,7 @@ def _depths(trace: JointTrace, decision: Decision) -> dict[Ref, int]:
     return depths
 
 
-def _show_step(evaluation: Evaluation, step: Step, depth: int) -> None:
-    console = terminal()
-    indent = "  " * min(depth, 8)
+def _show_step(evaluation: Evaluation, step: Step, depth: int, full: bool) -> None:
     marks = [
         word
         for word, on in (
@@ -109,14 +110,20 @@ def _show_step(evaluation: Evaluation, step: Step, depth: int) -> None:
     ]
     rule = f" [dim]\\[{step.rule}][/dim]" if step.rule else ""
     tail = f" [dim]({', '.join(marks)})[/dim]" if marks else ""
-    console.print(f"{indent}{_plain(step.sentence)}{rule}{tail}")
+    indent = 2 * min(depth, 8)
+    _indented(indent, f"{_plain(step.sentence)}{rule}{tail}")
     if step.figures:
-        console.print(f"{indent}  [dim]{_plain(step.figures)}[/dim]")
+        _indented(indent + 2, f"[dim]{_plain(step.figures)}[/dim]")
     for candidate in step.candidates:
-        if not candidate.governs:
+        if not candidate.governs and (full or candidate.value.presence != "absent"):
             quantity = evaluation.knowledge.quantities[candidate.ref.quantity]
             value = value_text(quantity, candidate.value)
-            console.print(f"{indent}  [dim]beside: {quantity.title} {value} {candidate.remark}[/dim]")
+            _indented(indent + 2, f"[dim]beside: {quantity.title} {value} {_plain(candidate.remark)}[/dim]")
+
+
+def _indented(columns: int, text: str) -> None:
+    """One line, its continuation lines under its first word."""
+    terminal().print(Padding(text, (0, 0, 0, columns)))
 
 
 def _plain(text: str) -> str:
