@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from functools import cache
 
@@ -10,7 +11,8 @@ from weldbasis.formula.parse import Binary, Call, Formula, Minus, Name, Node, Nu
 _RANK = {"+": 1, "-": 1, "*": 2, "/": 2, "**": 4}
 _SIGN = {"+": " + ", "-": " − ", "*": " × ", "/": " / ", "**": "^"}
 _MINUS_RANK, _WHOLE = 3, 9
-_MARK = "\0"  # stands before a name among the pieces
+_MARK, _ALONE = "\0", "\1"  # before a name among the pieces; before one that has brackets of its own already
+_PLAIN = re.compile(r"\d+\.?\d*|\.\d+|[A-Za-z_]\w*")
 
 
 def show(formula: Formula, figures: Mapping[str, str]) -> str:
@@ -18,7 +20,7 @@ def show(formula: Formula, figures: Mapping[str, str]) -> str:
 
     A figure that is a range, or negative, is put in brackets. A name without a figure stays a name.
     """
-    return "".join(piece if not is_name else _figure(figures.get(piece, piece)) for piece, is_name in _pieces(formula))
+    return "".join(_filled(piece, figures) for piece in _pieces(formula))
 
 
 def symbolic(formula: Formula) -> str:
@@ -26,30 +28,33 @@ def symbolic(formula: Formula) -> str:
     return show(formula, {})
 
 
-def _figure(text: str) -> str:
-    return text if text.replace(".", "", 1).replace("_", "").isalnum() else f"({text})"
+def _filled(piece: str, figures: Mapping[str, str]) -> str:
+    if not piece.startswith((_MARK, _ALONE)):
+        return piece
+    figure = figures.get(piece[1:], piece[1:])
+    return figure if piece[0] == _ALONE or _PLAIN.fullmatch(figure) else f"({figure})"
 
 
 @cache
-def _pieces(formula: Formula) -> tuple[tuple[str, bool], ...]:
-    """The print as fixed pieces and names, in order."""
-    text, _ = _text(formula.root)
-    return tuple((piece[1:], True) if piece.startswith(_MARK) else (piece, False) for piece in text)
+def _pieces(formula: Formula) -> tuple[str, ...]:
+    """The print as fixed pieces and marked names, in order."""
+    return tuple(_text(formula.root)[0])
 
 
 def _text(node: Node) -> tuple[list[str], int]:
+    """The pieces of a part, and how firmly it holds together: what holds less firmly than its place needs brackets."""
     if isinstance(node, Number):
         return [node.spelling], _WHOLE
     if isinstance(node, Name):
         return [_MARK + node.name], _WHOLE
     if isinstance(node, Minus):
         text, rank = _text(node.part)
-        return ["−", *(text if rank >= _MINUS_RANK else _bracketed(text))], _MINUS_RANK
+        return ["−", *(text if rank > _MINUS_RANK else _bracketed(text))], _MINUS_RANK
     if isinstance(node, Call):
         inner: list[str] = []
         for argument in node.arguments:
             inner += [", "] if inner else []
-            inner += _text(argument)[0]
+            inner += [_ALONE + argument.name] if isinstance(argument, Name) else _text(argument)[0]
         return [node.function, *_bracketed(inner)], _WHOLE
     return _binary(node)
 
