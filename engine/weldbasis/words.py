@@ -62,3 +62,8 @@ def with_unit(text: str, unit: str) -> str:
 def places(values: int, one: str, many: str = "") -> str:
     """A count with its noun: "1 joint", "3 joints"."""
     return f"{values} {one if values == 1 else many or one + 's'}"
+
+
+def counted(number: int, thing: str) -> str:
+    """A number of things: "1 joint", "32 joints"."""
+    return f"{number} {thing}" if number == 1 else f"{number} {thing}s"

@@ -17,6 +17,7 @@ from weldbasis.record import canonical_bytes, record_from_traces, write_aside
 from weldbasis.settle import settle
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text, finding_count_text
+from weldbasis.words import counted
 
 
 @click.command("decide")
@@ -87,7 +88,8 @@ def _show(project: Project, evaluation: Evaluation, traces: list[JointTrace]) ->
     console.print(table)
     states = Counter(d.state for trace in traces for d in trace.decisions if not quantities[d.ref.quantity].part_of)
     click.echo(
-        f"{len(traces)} joints: " + ", ".join(f"{states[s]} decisions {s}" for s in ("settled", "open", "uncovered"))
+        f"{counted(len(traces), 'joint')}: "
+        + ", ".join(f"{counted(states[s], 'decision')} {s}" for s in ("settled", "open", "uncovered"))
     )
     for trace in traces:
         for finding in trace.findings:

@@ -9,6 +9,7 @@ import click
 from weldbasis.cli.console import kb_option, knowledge_from, progress
 from weldbasis.places import site_folder
 from weldbasis.site.publish import publish
+from weldbasis.words import counted
 
 
 @click.command("publish")
@@ -35,5 +36,5 @@ def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
         task = bar.task_ids[0]
         made = publish(chosen, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total))
     home = (made.folder / "index.html").resolve()
-    click.echo(f"Published {len(chosen)} projects, {made.joints} joints, {made.pages} pages.")
+    click.echo(f"Published {counted(len(chosen), 'project')}, {counted(made.joints, 'joint')}, {made.pages} pages.")
     click.echo(f"Open {home.as_uri()} in any browser; no network is needed.")

@@ -10,6 +10,7 @@ from weldbasis.cli.console import kb_option, knowledge_from, project_from
 from weldbasis.evaluate import evaluate
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.record import read_record, record_of, replay
+from weldbasis.words import counted
 
 _MOST_LINES = 40
 
@@ -49,7 +50,8 @@ def command(record: Path, folder: Path | None, kb: Path | None) -> None:
     fresh = record_of(project, evaluate(knowledge, project.facts))
     found = replay(kept, fresh)
     if not found:
-        click.echo(f"{record}: same bytes; {len(fresh['joints'])} joints, rules {fresh['rules']['digest'][:19]}…")
+        joints, rules = counted(len(fresh["joints"]), "joint"), fresh["rules"]["digest"][:19]
+        click.echo(f"{record}: same bytes; {joints}, rules {rules}…")
         return
     for line in found[:_MOST_LINES]:
         click.echo(line)
