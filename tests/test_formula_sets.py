@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from test_formula_parse import PUBLISHED, WITHIN, formulas
+from test_formula_points import PUBLISHED, WITHIN, formulas
 from weldbasis.formula import parse_formula, range_over, slopes, value_at
 from weldbasis.formula.parse import Formula
 from weldbasis.formula.sets import Ranges
@@ -143,6 +143,7 @@ KNOWN: list[tuple[str, dict[str, tuple[float, float]], tuple[float, float], bool
     ("max(x, 1 - x)", {"x": (0, 1)}, (0.5, 1), True, True),
     ("min(x, y, 2)", {"x": (0, 5), "y": (1, 3)}, (0, 2), True, True),
     ("round_up(x, 5)", {"x": (101, 112)}, (105, 115), True, True),
+    ("round_up(x, y)", {"x": (0, 7), "y": (4, 1e12)}, (0, 1e12 + 7), False, True),
     ("round_up(x, 5) - x", {"x": (101, 104)}, (1, 4), False, True),
     ("2**x", {"x": (-1, 3)}, (0.5, 8), True, True),
     ("x**y", {"x": (2, 3), "y": (-1, 2)}, (1 / 3, 9), True, True),

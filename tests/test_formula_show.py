@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from test_formula_parse import NAMES, PUBLISHED, formulas
+from test_formula_points import NAMES, PUBLISHED, formulas
 from weldbasis.formula import parse_comparison, parse_formula, show, symbolic, value_at
 
 CET = PUBLISHED["preheat, cet"]

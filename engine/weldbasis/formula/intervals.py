@@ -129,7 +129,7 @@ def _reciprocal(part: Jet) -> Jet:
     low = np.where(at_zero & below, -np.inf, 1 / part.high)
     high = np.where(at_zero & above, np.inf, 1 / part.low)
     shrunk = 1 / np.maximum(np.abs(part.low), np.abs(part.high))
-    steepest = np.where(at_zero, np.inf, np.maximum(low * low, high * high))
+    steepest = np.maximum(low * low, high * high)
     slopes = _scaled(part.slopes, (-steepest, -shrunk * shrunk))
     return Jet(low, high, slopes, part.defined & ~at_zero, part.none | (at_zero & ~below & ~above))
 
@@ -214,7 +214,9 @@ def _stepped(part: Jet, step: Jet) -> Jet:
     """round_up rises with its first argument; along a step that is itself a range nothing is claimed."""
     fixed = (step.low == step.high) & np.isfinite(step.low)
     above = np.where(step.high > 0, part.high + step.high, np.nan)
-    low = np.where(fixed, round_up(part.low, step.low), part.low - 1e-9 * np.abs(part.low))
+    noise = 1e-9 * np.maximum(np.abs(part.low), step.high)  # round_up lets so little pass
+    below = np.where(part.low >= 0, np.maximum(part.low - noise, 0.0), part.low - noise)
+    low = np.where(fixed, round_up(part.low, step.low), below)
     high = np.where(fixed, round_up(part.high, step.low), above)
     own = _ZERO, np.where(part.low < part.high, np.inf, 0.0)
     free = np.where(fixed, 0.0, np.inf)
