@@ -11,6 +11,7 @@ import subprocess
 import sys
 import tempfile
 import time
+from contextlib import suppress
 from pathlib import Path
 
 import psutil
@@ -56,17 +57,21 @@ def make_plain(folder: Path, pages: int) -> None:
         (docs / "pages" / f"p{number}.md").write_text(f"# Page {number}\n\n{table}{sections}", encoding="utf-8")
 
 
+def memory_of(process: psutil.Process) -> int:
+    """Bytes of a process; what forks share counts once where the system tells (Linux), else once in each."""
+    info = process.memory_full_info()
+    return int(getattr(info, "pss", info.rss))
+
+
 def run(*words: str) -> tuple[float, float]:
     """Seconds and peak memory in MiB of a command and its children."""
     start = time.perf_counter()
     process = psutil.Popen([sys.executable, "-m", *words], stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
     peak = 0
     while process.poll() is None:
-        try:
-            peak = max(peak, sum(p.memory_info().rss for p in [process, *process.children(recursive=True)]))
-        except psutil.NoSuchProcess:
-            break
-        time.sleep(0.02)
+        with suppress(psutil.NoSuchProcess, psutil.AccessDenied):  # a child may end in between
+            peak = max(peak, sum(map(memory_of, [process, *process.children(recursive=True)])))
+        time.sleep(0.1)
     if process.wait() != 0:
         raise SystemExit(f"{' '.join(words)} failed")
     return time.perf_counter() - start, peak / 2**20
