@@ -106,6 +106,22 @@ def test_bad_input_ends_with_2_and_no_traceback(started: Path) -> None:
         assert "Traceback" not in done.stderr
 
 
+def test_publish_writes_where_it_says_and_nowhere_else(started: Path) -> None:
+    def source() -> set[Path]:
+        return {path for path in site_folder().rglob("*") if "__pycache__" not in path.parts}
+
+    before = source()
+    for _ in range(2):  # the second time over a site of its own
+        done = run("publish", "quay-crane", "--to", "sites/crane", cwd=started)
+        assert done.returncode == 0, done.stderr
+        site = started / "sites" / "crane"
+        assert (site / "index.html").resolve().as_uri() in done.stdout
+        assert "Quay crane" in (site / "index.html").read_text(encoding="utf-8")
+        assert (site / "projects" / "quay-crane" / "joints" / "J1.html").is_file()
+        assert [path.name for path in site.parent.iterdir()] == ["crane"]
+    assert source() == before
+
+
 def test_publish_never_takes_a_foreign_folder(started: Path) -> None:
     foreign = started / "photos"
     foreign.mkdir(exist_ok=True)

@@ -47,6 +47,7 @@ def publish(projects: Sequence[Path], to: Path, knowledge: Knowledge, progress: 
 
     Raises Refused where a project is wrong, or where `to` holds anything that weldbasis did not make.
     """
+    to = to.absolute()  # mkdocs would take a relative folder from where mkdocs.yml lies
     _refuse_foreign(to)
     content = decide_projects(projects, knowledge, progress)
     to.parent.mkdir(parents=True, exist_ok=True)
