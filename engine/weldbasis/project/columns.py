@@ -11,8 +11,9 @@ import numpy as np
 from weldbasis.facts import Facts, Origin
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.problem import Place
-from weldbasis.project.steels import ELEMENTS, Fact
-from weldbasis.ranges import Range, parse_range
+from weldbasis.project.given import Fact, standing_in
+from weldbasis.project.steels import ELEMENTS
+from weldbasis.ranges import Range
 from weldbasis.values import ABSENT, ASSUMED, PRESENT, UNKNOWN, Column, Levels, Numbers, mask_of
 
 
@@ -57,11 +58,18 @@ def facts_from_rows(knowledge: Knowledge, rows: Sequence[JointRow]) -> Facts:
     origins: dict[Origin, int] = {}
     given: dict[str, Column] = {}
     places: dict[str, Any] = {}
+    said = {name for row in rows for name in row.facts} | {name for _, m in members for name in m.facts}
     for quantity in knowledge.quantities.values():
+        default = _default_cell(quantity)
+        if default is _NOTHING and quantity.id not in said:
+            continue
         if quantity.of == "joint":
-            cells = [_cell(quantity, row.facts.get(quantity.id), False) for row in rows]
+            cells = [_cell(quantity, row.facts.get(quantity.id), default) for row in rows]
         else:
-            cells = [_cell(quantity, m.facts.get(quantity.id), m.weld_metal) for _, m in members]
+            # What nothing is known of in weld metal stays absent: a residual range of parent plate says nothing of it.
+            cells = [
+                _cell(quantity, m.facts.get(quantity.id), _NOTHING if m.weld_metal else default) for _, m in members
+            ]
         if all(cell.presence == ABSENT for cell in cells):
             continue
         given[quantity.id] = _column(quantity, cells)
@@ -76,21 +84,21 @@ def facts_from_rows(knowledge: Knowledge, rows: Sequence[JointRow]) -> Facts:
     )
 
 
-def _cell(quantity: Quantity, fact: Fact | None, weld_metal: bool) -> _Cell:
-    if fact is not None:
-        flags = int(ASSUMED) if fact.assumed else 0
-        return _filled(quantity, fact.value, flags, fact.origin)
-    default = quantity.if_not_given
-    # What nothing is known of in weld metal stays absent: a residual range of parent plate says nothing of it.
-    if default == "absent" or (weld_metal and quantity.of == "member"):
+def _default_cell(quantity: Quantity) -> _Cell:
+    """What the vocabulary puts where nothing is given; an element taken as residual is an assumption."""
+    fact = standing_in(quantity)
+    if fact is None:
         return _NOTHING
-    if default == "unknown":
-        everything: Range | tuple[str, ...] = quantity.range if quantity.is_number else quantity.order
-        return _filled(quantity, everything, int(UNKNOWN), Origin("unknown", "not known"))
-    value: Range | tuple[str, ...] = parse_range(default) if quantity.is_number else (str(default),)
-    residual = quantity.id in ELEMENTS.values()
-    origin = Origin("assumption" if residual else "default", quantity.if_not_given_because)
-    return _filled(quantity, value, int(ASSUMED) if residual else 0, origin)
+    if quantity.id in ELEMENTS.values() and not fact.unknown:
+        fact = Fact(fact.value, Origin("assumption", fact.origin.text), assumed=True)
+    return _cell(quantity, fact, _NOTHING)
+
+
+def _cell(quantity: Quantity, fact: Fact | None, default: _Cell) -> _Cell:
+    if fact is None:
+        return default
+    flags = (int(ASSUMED) if fact.assumed else 0) | (int(UNKNOWN) if fact.unknown else 0)
+    return _filled(quantity, fact.value, flags, fact.origin)
 
 
 def _filled(quantity: Quantity, value: Range | tuple[str, ...], flags: int, origin: Origin) -> _Cell:

@@ -1,25 +1,25 @@
-"""Weld lists and certificates from CSV beside a project: rows with the place of every cell."""
+"""CSV tables beside a project: rows of cells, the unit each header names, and the place of every cell."""
 
 from __future__ import annotations
 
 import csv
 import io
 import re
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
 
 from weldbasis.problem import Place, Problem, Refused
 
-_HEADER = re.compile(r"(.*?)\s*(?:\[(.+)\])?\s*")
-_MEMBER = re.compile(r"(steel|thickness|continuous|member_thickness)[ _](\d+)")
-_DECIMAL_COMMA = re.compile(r"-?\d+,\d+")
+_HEADER = re.compile(r"(.*?)\s*(?:\[\s*(.*?)\s*\])?\s*")
+_DECIMAL_COMMA = re.compile(r"[-+]?\d+,\d+")
+# A number, a bound or a range without a unit of its own; only these take the unit of their header.
+_BARE = re.compile(r"(?:<=|>=|<|>|≤|≥)?\s*[-+−]?[\d.]+(?:[eE][-+]?\d+)?(?:\s*(?:(?i:to)|…|\.\.\.?|–)\s*[-+−]?[\d.]+)?")
 
 
 @dataclass(frozen=True)
 class Row:
-    """A row's cells by header, the unit each header names, and where the row stands."""
+    """A row's cells by header, the unit of each header, and where the row stands; the last line is that of its end."""
 
     cells: Mapping[str, str]
     units: Mapping[str, str]
@@ -27,85 +27,109 @@ class Row:
     line: int
 
     def place(self, header: str = "") -> Place:
-        """The place of a cell; the column counts cells."""
+        """The place of a cell; the column counts cells, as a spreadsheet does."""
         names = list(self.units)
         return Place(self.file, self.line, names.index(header) + 1 if header in names else 1)
 
+    def with_unit(self, header: str) -> str:
+        """A cell, with the unit of its header where it is a number that carries none."""
+        cell, unit = self.cells[header], self.units[header]
+        return f"{cell} {unit}" if unit and _BARE.fullmatch(cell) else cell
 
-def read_rows(path: Path, shown: str) -> list[Row]:
-    """All rows of a CSV file with a header line. Raises Refused with what is wrong in it."""
-    try:
-        text = path.read_text(encoding="utf-8-sig")
-    except (OSError, UnicodeDecodeError) as fault:
-        reason = fault.strerror if isinstance(fault, OSError) else "this is not UTF-8 text"
-        raise Refused(
-            [Problem(Place(shown), f"cannot be read: {reason}", do="check the name; save it as UTF-8 CSV")]
-        ) from fault
-    delimiter = ";" if text.split("\n", 1)[0].count(";") > text.split("\n", 1)[0].count(",") else ","
-    lines = list(csv.reader(io.StringIO(text), delimiter=delimiter))
+
+@dataclass(frozen=True)
+class Table:
+    """A CSV file: the place of each header, all rows that can be read, and what is wrong in the others."""
+
+    file: str
+    headers: Mapping[str, Place]
+    rows: tuple[Row, ...]
+    problems: tuple[Problem, ...] = ()
+
+
+def read_table(path: Path, shown: str) -> Table:
+    """A CSV file with a header line; `shown` is its name in messages. Raises Refused where it is no table.
+
+    The separator is a comma, a semicolon or a tab, whichever the header line has most of.
+    """
+    lines = _lines(_text(path, shown), shown)
     if not lines:
         raise Refused([Problem(Place(shown), "the file is empty", do="start it with a line of headers")])
-    units = {}
-    for column, title in enumerate(lines[0], start=1):
-        match = _HEADER.fullmatch(title.strip())
-        name, unit = (match.group(1), match.group(2) or "") if match else (title, "")
-        if not name or name in units:
-            what = "a header is empty" if not name else f"the header {name!r} stands here twice"
-            raise Refused([Problem(Place(shown, 1, column), what, do="give every column a name of its own")])
-        units[name] = unit
-    return list(_rows(lines, units, shown))
+    units = _headers(lines[0][1], shown)
+    headers = {name: Place(shown, 1, column) for column, name in enumerate(units, start=1)}
+    problems: list[Problem] = []
+    rows = tuple(_rows(lines[1:], units, shown, problems))
+    return Table(shown, headers, rows, tuple(problems))
 
 
-def _rows(lines: list[list[str]], units: Mapping[str, str], shown: str) -> Iterator[Row]:
+def _text(path: Path, shown: str) -> str:
+    try:
+        return path.read_text(encoding="utf-8-sig")
+    except OSError as fault:
+        why, do = f"cannot be read: {fault.strerror}", "check the name; it counts from the project's folder"
+    except UnicodeDecodeError:
+        why, do = "this is not UTF-8 text", "save the table as CSV in UTF-8"
+    raise Refused([Problem(Place(shown), why, do=do)])
+
+
+def _lines(text: str, shown: str) -> list[tuple[int, list[str]]]:
+    """Every line of cells with the number of the line it starts in."""
+    first = text.split("\n", 1)[0]
+    delimiter = max(",;\t", key=first.count)
+    reader = csv.reader(io.StringIO(text, newline=None), delimiter=delimiter, strict=True)
+    found, start = [], 1
+    try:
+        for cells in reader:
+            found.append((start, cells))
+            start = reader.line_num + 1
+    except csv.Error as fault:
+        what = f"this is no CSV: {fault}"
+        raise Refused([Problem(Place(shown, start), what, do="check the quotes from here on")]) from fault
+    return found
+
+
+def _headers(cells: Sequence[str], shown: str) -> dict[str, str]:
+    """Names and units of the columns. Empty headers at the end of the line are the leavings of a spreadsheet."""
+    kept = list(cells)
+    while kept and not kept[-1].strip():
+        kept.pop()
+    units: dict[str, str] = {}
     problems = []
-    for number, cells in enumerate(lines[1:], start=2):
-        if not any(cell.strip() for cell in cells) or cells[0].lstrip().startswith("#"):
+    for column, title in enumerate(kept, start=1):
+        match = _HEADER.fullmatch(title.strip())
+        name, unit = (match.group(1), match.group(2) or "") if match else (title.strip(), "")
+        if not name or name in units:
+            what = f"the header {name!r} stands here twice" if name else "a header is empty"
+            problems.append(Problem(Place(shown, 1, column), what, do="give every column a name of its own"))
+        units[name] = unit
+    if not units:
+        problems.append(Problem(Place(shown), "the first line is empty", do="start the file with a line of headers"))
+    if problems:
+        raise Refused(problems)
+    return units
+
+
+def _rows(
+    lines: Sequence[tuple[int, list[str]]], units: Mapping[str, str], shown: str, problems: list[Problem]
+) -> Iterator[Row]:
+    """The rows that can be read; mistakes in the others are added to `problems`."""
+    for number, cells in lines:
+        if not any(cell.strip() for cell in cells):
             continue
-        if len(cells) != len(units):
+        if len(cells) < len(units) or any(cell.strip() for cell in cells[len(units) :]):
             problems.append(
                 Problem(
                     Place(shown, number),
                     f"{len(cells)} cells stand under {len(units)} headers",
-                    do="check for a separator too many or too few; put text with separators in quotes",
+                    "a decimal comma or a comma in a text may have cut a cell in two",
+                    "check for a separator too many or too few; put text with separators in quotes",
                 )
             )
             continue
-        row = Row({name: cell.strip() for name, cell in zip(units, cells, strict=True)}, units, shown, number)
-        problems += [
-            Problem(row.place(name), f"{cell!r} has a decimal comma", do="write a decimal point")
-            for name, cell in row.cells.items()
-            if _DECIMAL_COMMA.fullmatch(cell)
-        ]
-        yield row
-    if problems:
-        raise Refused(problems)
-
-
-def joint_from(row: Row) -> dict[str, Any]:
-    """A joint as the project file would write it; empty cells are left out, units of headers are put to numbers."""
-    joint: dict[str, Any] = {}
-    members: dict[int, dict[str, Any]] = {}
-    for name, cell in row.cells.items():
-        if not cell:
-            continue
-        value = f"{cell} {row.units[name]}" if row.units[name] else cell
-        if match := _MEMBER.fullmatch(name):
-            members.setdefault(int(match.group(2)), {})[match.group(1)] = value
-        else:
-            joint[name] = value
-    joint["members"] = [members[number] for number in sorted(members)]
-    return joint
-
-
-def certificate_from(row: Row) -> tuple[str, dict[str, Any]]:
-    """A certificate's number, and its heat and composition as the project file would write a steel."""
-    composition = {name: cell for name, cell in row.cells.items() if re.fullmatch(r"[A-Z][a-z]?", name) and cell}
-    origin = {"certificate": row.cells.get("certificate", "")}
-    if row.cells.get("heat"):
-        origin["heat"] = row.cells["heat"]
-    found: dict[str, Any] = {"composition": composition, "origin": origin}
-    for field in ("grade", "yield_strength", "delivery"):
-        if row.cells.get(field):
-            unit = row.units[field]
-            found[field] = f"{row.cells[field]} {unit}".strip()
-    return row.cells.get("certificate", ""), found
+        row = Row({name: cell.strip() for name, cell in zip(units, cells, strict=False)}, units, shown, number)
+        commas = [name for name, cell in row.cells.items() if _DECIMAL_COMMA.fullmatch(cell)]
+        for name in commas:
+            what = f"{row.cells[name]!r} has a decimal comma"
+            problems.append(Problem(row.place(name), what, do="write a decimal point"))
+        if not commas:
+            yield row

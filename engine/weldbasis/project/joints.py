@@ -1,195 +1,182 @@
-"""One joint of a project file into facts: its fields, its consumable, its members and its weld metal."""
+"""One joint of a project into facts: its fields, the project's defaults, its consumable, its parts."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass, replace
 from typing import Any
 
 from weldbasis.facts import Origin
-from weldbasis.knowledge import Consumable, Quantity
-from weldbasis.problem import Place, nearest
-from weldbasis.project.columns import JointRow, MemberRow
-from weldbasis.project.reading import Reading
-from weldbasis.project.steels import Fact, member_facts, weld_metal_facts
+from weldbasis.knowledge import Consumable, Knowledge
+from weldbasis.problem import nearest
+from weldbasis.project.columns import JointRow
+from weldbasis.project.given import Fact, assumption, fact_of, text_of
+from weldbasis.project.members import member_fields, parent_rows, weld_metal_row
+from weldbasis.project.reading import Reading, Written
 from weldbasis.ranges import Range
-from weldbasis.units import read_number
 
-_JOINT_WORDS = frozenset({"joint", "title", "members", "note", "assumptions", "consumable", "weld_metal", "form"})
+# What a joint may say beside the quantities of the vocabulary.
+_WORDS = ("joint", "title", "note", "members", "consumable", "weld_metal", "assumptions")
+_NOT_FOR_ALL = ("joint", "title", "note", "members")
+# A default gives way where a joint itself says what the value is worked out from.
+_GIVES_WAY: Mapping[str, frozenset[str]] = {
+    "heat_input": frozenset({"arc_energy", "voltage", "current", "travel_speed"}),
+    "arc_energy": frozenset({"voltage", "current", "travel_speed"}),
+    "hydrogen": frozenset({"consumable", "hydrogen_measured", "consumable_hydrogen_max"}),
+    "hydrogen_measured": frozenset({"consumable"}),
+    "consumable_hydrogen_max": frozenset({"consumable"}),
+    "covering": frozenset({"consumable"}),
+}
 
 
-def joint_row(
-    reading: Reading, written: Mapping[str, Any], place: Place, defaults: Mapping[str, Any], contract: tuple[str, ...]
-) -> JointRow | None:
-    """One joint as written, with the project's defaults, or None where it has no name; mistakes are noted."""
-    name = str(written.get("joint", ""))
-    if not name:
+@dataclass(frozen=True)
+class Defaults:
+    """What a project says for all joints: facts by quantity id, and its other words."""
+
+    facts: Mapping[str, Fact]
+    written: Written
+
+
+def joint_fields(knowledge: Knowledge) -> tuple[str, ...]:
+    """Everything that a joint may say, by name."""
+    given = (q.id for q in knowledge.quantities.values() if q.of == "joint" and q.given != "never")
+    return (*_WORDS, *given)
+
+
+def read_defaults(reading: Reading, written: Written) -> Defaults:
+    """The project's defaults, checked once; mistakes are noted at their own place."""
+    for key in _NOT_FOR_ALL:
+        if key in written.data:
+            reading.fault(
+                written.place_of(key), f"{key!r} cannot be a default", "each joint has its own", "take it out"
+            )
+    facts = _facts(reading, written, "the defaults", Origin("default", "default of the project", reading.shown))
+    return Defaults(_with_reasons(reading, written, facts, "the defaults"), written)
+
+
+def joint_row(reading: Reading, written: Written, defaults: Defaults, contract: tuple[str, ...]) -> JointRow | None:
+    """One joint with the project's defaults, or None where it has no name; mistakes are noted."""
+    said, place = written.data, written.place_of()
+    name = said.get("joint", "")
+    if name == "" or isinstance(name, list | dict):
         reading.fault(place, "a joint has no name", do="add joint: J1")
         return None
-    fields = {**defaults, **written}
-    facts = _joint_facts(reading, name, written, fields, place)
-    for quantity in reading.knowledge.quantities:
-        if quantity.startswith("contract_") and quantity not in facts:
-            bound = quantity.removeprefix("contract_").replace("_", "-") in contract
-            facts[quantity] = Fact(
-                ("yes",) if bound else ("no",), Origin("project", "the project's contract list", str(place))
-            )
-    consumable = _consumable(reading, fields, place)
+    name = str(name)
+    for word in ("title", "note"):
+        if isinstance(said.get(word, ""), list | dict):
+            reading.fault(written.place_of(word), f"joint {name}: a text is wanted after {word}", do="put it in quotes")
+    origin = Origin("project", f"project, joint {name}", str(place))
+    own = _facts(reading, written, f"joint {name}", origin)
+    kept = {key: fact for key, fact in defaults.facts.items() if key not in said and not _gives_way(key, said)}
+    facts = _with_reasons(reading, written, kept | own, f"joint {name}")
+    for quantity in reading.knowledge.quantities.values():
+        missing = quantity.id not in said and quantity.id not in defaults.written.data
+        if quantity.of == "joint" and quantity.given == "must" and missing:
+            reading.fault(place, f"joint {name} says nothing of {quantity.id}", quantity.says, f"add {quantity.id}: …")
+    facts = _contract_facts(reading.knowledge, contract, str(place)) | facts
+    consumable = _consumable(reading, written, defaults, name, facts.get("process"))
     if consumable:
-        origin = Origin("consumable", f"classification {consumable.id}", str(place))
-        if consumable.hydrogen_max is not None:
-            facts.setdefault(
-                "consumable_hydrogen_max", Fact(Range(consumable.hydrogen_max, consumable.hydrogen_max), origin)
-            )
-        facts.setdefault("covering", Fact((consumable.covering,), origin))
-    members = _members(reading, name, fields.get("members", []), place, consumable, fields.get("weld_metal", {}))
-    form = str(fields.get("form", ""))
-    return JointRow(name, str(fields.get("title", "")), form, str(fields.get("note", "")), place, facts, members)
+        facts = _consumable_facts(consumable, str(place)) | facts
+    parts = written if "members" in said else written.part(data={**said, "members": []})
+    rows = parent_rows(reading, name, parts)
+    metal = written if "weld_metal" in said else defaults.written
+    whose = f"joint {name}, weld metal" if metal is written else "the defaults, weld metal"
+    analysis = metal.part("weld_metal", data=metal.data.get("weld_metal", {}))
+    weld = weld_metal_row(reading, whose, analysis, consumable, len(rows) + 1, str(place))
+    form = facts["form"].value if "form" in facts else ()
+    assert not isinstance(form, Range)
+    return JointRow(
+        name, str(said.get("title", "")), " or ".join(form), str(said.get("note", "")), place, facts, (*rows, weld)
+    )
 
 
-def _consumable(reading: Reading, fields: Mapping[str, Any], place: Place) -> Consumable | None:
-    name = fields.get("consumable")
-    if name is None:
-        return None
-    found = reading.knowledge.consumables.get(str(name))
-    if found is None:
-        reading.fault(
-            place,
-            f"{name!r} is no consumable classification known here",
-            do=nearest(str(name), reading.knowledge.consumables),
-        )
-    return found
+def _gives_way(key: str, said: Mapping[str, Any]) -> bool:
+    return not _GIVES_WAY.get(key, frozenset()).isdisjoint(said)
 
 
-def _joint_facts(
-    reading: Reading, name: str, written: Mapping[str, Any], fields: Mapping[str, Any], place: Place
-) -> dict[str, Fact]:
-    reasons = {**fields.get("assumptions", {})}
+def _facts(reading: Reading, written: Written, whose: str, origin: Origin) -> dict[str, Fact]:
+    """The quantities among the fields, each at its own place."""
     found: dict[str, Fact] = {}
-    for key, said in fields.items():
-        value = said
-        if key in _JOINT_WORDS and key != "form":
+    for key, said in written.data.items():
+        if key in _WORDS:
             continue
-        at = place if key not in written or place.file != reading.document.file else _inner(reading, place, key)
+        at = written.place_of(key)
         quantity = reading.knowledge.quantities.get(key)
         if quantity is None or quantity.of != "joint" or quantity.given == "never":
-            known = [q.id for q in reading.knowledge.quantities.values() if q.of == "joint" and q.given != "never"]
-            why = "each member has it, not the joint" if quantity and quantity.of == "member" else ""
-            why = "it is worked out, never given" if quantity and quantity.given == "never" else why
-            reading.fault(
-                at, f"joint {name}: {key!r} is no field of a joint", why, nearest(key, [*known, *sorted(_JOINT_WORDS)])
-            )
+            reading.fault(at, f"{whose}: {key!r} is no field of a joint", *_why_no_field(reading.knowledge, key))
             continue
-        origin = (
-            Origin("project", f"project, joint {name}", str(at))
-            if key in written
-            else Origin("default", "default of the project", reading.shown)
-        )
-        if isinstance(value, dict):
-            reasons[key] = value.get("because", "")
-            value = value.get("value")
-        if reasons.get(key):
-            origin = Origin("assumption", f"assumed: {reasons[key]}", str(at))
-        fact = _fact(reading, quantity, value, origin, at, f"joint {name}", key in reasons)
-        if fact:
-            found[key] = fact
-    for quantity in reading.knowledge.quantities.values():
-        if quantity.of == "joint" and quantity.given == "must" and quantity.id not in fields:
-            reading.fault(place, f"joint {name} says nothing of {quantity.id}", quantity.says, f"add {quantity.id}: …")
+        try:
+            found[key] = fact_of(quantity, said, replace(origin, place=str(at)))
+        except ValueError as fault:
+            reading.fault(at, f"{whose}, {key}: {fault}")
     return found
 
 
-def _inner(reading: Reading, place: Place, key: str) -> Place:
-    for path, at in reading.document.places.items():
-        if len(path) == 3 and path[0] == "joints" and path[2] == key and reading.document.place(*path[:2]) == place:
-            return at
-    return place
+def _why_no_field(knowledge: Knowledge, key: str) -> tuple[str, str]:
+    """Why a joint cannot say something, and what to do about it."""
+    if key in member_fields(knowledge):
+        return "each member has it, not the joint", f"write it in members: [{{{key}: …, …}}, …]"
+    if key in knowledge.quantities:
+        return "it is worked out, never given", "take it out"
+    return "", nearest(key, [field for field in joint_fields(knowledge) if not field.startswith("contract_")])
 
 
-def _fact(
-    reading: Reading, quantity: Quantity, value: Any, origin: Origin, place: Place, whose: str, assumed: bool
-) -> Fact | None:
-    """A written value as a fact, or None with the problem noted."""
-    try:
-        if quantity.is_number:
-            if isinstance(value, list):
-                raise ValueError("a number or a range 'a to b' is wanted, not a list")
-            number = read_number(value, quantity.unit)
-            if number.low < quantity.range.low or number.high > quantity.range.high:
-                raise ValueError(
-                    f"{value!r} lies outside what {quantity.id} can be, {quantity.range} {quantity.unit}".rstrip()
-                )
-            return Fact(number, origin, assumed)
-        levels = [str(level) for level in value] if isinstance(value, list) else [str(value)]
-        for level in levels:
-            if level not in quantity.order:
-                raise ValueError(f"{level!r} is no level of {quantity.id}. {nearest(level, quantity.order)}")
-        return Fact(tuple(levels), origin, assumed)
-    except ValueError as fault:
-        reading.fault(place, f"{whose}, {quantity.id}: {fault}")
-        return None
-
-
-def _members(
-    reading: Reading,
-    joint: str,
-    written: Any,
-    place: Place,
-    consumable: Consumable | None,
-    weld_metal: Mapping[str, Any],
-) -> tuple[MemberRow, ...]:
-    if not isinstance(written, list) or not written:
-        reading.fault(
-            place,
-            f"joint {joint} has no members",
-            "a joint is made of two or more parts",
-            "add members: [{steel: …, thickness: …}, …]",
-        )
-        return ()
-    rows = [
-        row for number, part in enumerate(written, start=1) if (row := _member(reading, joint, number, part, place))
-    ]
-    project = Origin("project", f"project, joint {joint}", str(place))
-    try:
-        facts = weld_metal_facts(weld_metal, consumable, str(place))
-    except ValueError as fault:
-        reading.fault(place, f"joint {joint}, weld metal: {fault}")
-        facts = {}
-    facts["member_role"] = Fact(("weld-metal",), project)
-    facts["member_number"] = Fact(Range(len(written) + 1.0, len(written) + 1.0), project)
-    return (*rows, MemberRow("weld metal", facts, weld_metal=True))
-
-
-def _member(reading: Reading, joint: str, number: int, part: Any, place: Place) -> MemberRow | None:
-    whose = f"joint {joint}, member {number}"
-    if not isinstance(part, dict) or "steel" not in part or "thickness" not in part:
-        reading.fault(place, f"{whose} needs a steel and a thickness", do="write {steel: plate, thickness: 20 mm}")
-        return None
-    name = str(part["steel"])
-    if name not in reading.steels:
-        reading.fault(place, f"{whose}: {name!r} is no steel of this project", do=nearest(name, reading.steels))
-        return None
-    origin = Origin("project", f"project, {whose}", str(place))
-    own: dict[str, Fact] = {}
-    for key, value in part.items():
-        if key == "steel":
+def _with_reasons(reading: Reading, written: Written, facts: dict[str, Fact], whose: str) -> dict[str, Fact]:
+    """Facts, of which those listed under `assumptions` are marked as assumed for their reasons."""
+    reasons = written.data.get("assumptions", {})
+    if not isinstance(reasons, Mapping):
+        do = "write assumptions: {restraint: why it is taken to be so}"
+        reading.fault(written.place_of("assumptions"), f"{whose}: assumptions are fields and their reasons", do=do)
+        return facts
+    found = dict(facts)
+    for key, reason in reasons.items():
+        at = written.place_of("assumptions", key)
+        try:
+            text = text_of(reason, str(key))
+        except ValueError as fault:
+            reading.fault(at, f"{whose}, assumptions: {fault}", do="say why it is taken to be so")
             continue
-        quantity = reading.knowledge.quantities.get("member_thickness" if key == "thickness" else str(key))
-        if quantity is None or quantity.of != "member":
-            known = [q.id for q in reading.knowledge.quantities.values() if q.of == "member" and q.given != "never"]
-            reading.fault(
-                place, f"{whose}: {key!r} is no field of a member", do=nearest(key, ["steel", "thickness", *known])
-            )
-            continue
-        fact = _fact(reading, quantity, value, origin, place, whose, False)
-        if fact:
-            own[quantity.id] = fact
-    thickness = own.get("member_thickness")
-    if thickness is None or not isinstance(thickness.value, Range):
+        if key in facts:
+            found[key] = replace(facts[key], origin=assumption(text, str(at)), assumed=True)
+        elif key not in written.data:  # a field that is there and cannot be read was noted
+            reading.fault(at, f"{whose}: an assumption names {key!r}, which is not given", do=nearest(key, facts))
+    return found
+
+
+def _contract_facts(knowledge: Knowledge, contract: tuple[str, ...], place: str) -> dict[str, Fact]:
+    """Which requirement sets bind the joint; a joint's own word counts before the project's list."""
+    origin = Origin("project", "the project's contract list", place)
+    sets = {q: q.removeprefix("contract_").replace("_", "-") for q in knowledge.quantities if q.startswith("contract_")}
+    return {q: Fact(("yes" if name in contract else "no",), origin) for q, name in sets.items()}
+
+
+def _consumable(
+    reading: Reading, written: Written, defaults: Defaults, joint: str, process: Fact | None
+) -> Consumable | None:
+    """The joint's own consumable, else the default one if it is made for the joint's process."""
+    own = "consumable" in written.data
+    source = written if own else defaults.written
+    if "consumable" not in source.data:
         return None
-    try:
-        facts = member_facts(reading.steels[name], thickness.value) | own
-    except ValueError:  # what cannot be read in the steel's own entry was noted there
+    name, place = str(source.data["consumable"]), source.place_of("consumable")
+    found = reading.knowledge.consumables.get(name)
+    if found is None:
+        whose = f"joint {joint}" if own else "the defaults"
+        do = nearest(name, reading.knowledge.consumables)
+        reading.fault(place, f"{whose}: {name!r} is no consumable classification known here", do=do)
         return None
-    facts["member_role"] = Fact(("parent",), origin)
-    facts["member_number"] = Fact(Range(float(number), float(number)), origin)
-    return MemberRow(name, facts)
+    if process is None or isinstance(process.value, Range) or found.process in process.value:
+        return found
+    if own:
+        what = f"joint {joint}: {name} is made for process {found.process}, the joint is welded with"
+        do = "correct the process or name another consumable"
+        reading.fault(place, f"{what} {' or '.join(process.value)}", do=do)
+    return None
+
+
+def _consumable_facts(consumable: Consumable, place: str) -> dict[str, Fact]:
+    origin = Origin("consumable", f"classification {consumable.id}", place)
+    found = {"covering": Fact((consumable.covering,), origin)}
+    if consumable.hydrogen_max is not None:
+        found["consumable_hydrogen_max"] = Fact(Range(consumable.hydrogen_max, consumable.hydrogen_max), origin)
+    return found

@@ -2,22 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from pathlib import Path
-from typing import Any
 
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.schema import schema_problems
 from weldbasis.load.yaml_text import read_yaml
 from weldbasis.problem import Place, Problem, Refused, nearest
 from weldbasis.project.columns import JointRow, facts_from_rows, plain_facts
-from weldbasis.project.csv_tables import certificate_from, joint_from, read_rows
 from weldbasis.project.entries import JointEntry, Project
-from weldbasis.project.grades import NoSuchGrade, find_grade
-from weldbasis.project.joints import joint_row
-from weldbasis.project.reading import Reading
-from weldbasis.project.steels import Steel, member_facts, steel_entry
-from weldbasis.ranges import Range
+from weldbasis.project.joints import joint_fields, joint_row, read_defaults
+from weldbasis.project.lists import certificate_list, weld_list
+from weldbasis.project.members import member_fields
+from weldbasis.project.reading import Reading, Written, shown_path
+from weldbasis.project.steel_list import read_steels
+from weldbasis.project.steels import steel_entry
 
 
 def read_project(path: Path, knowledge: Knowledge) -> Project:
@@ -34,36 +32,30 @@ def read_project(path: Path, knowledge: Knowledge) -> Project:
                 )
             ]
         )
-    shown = _shown(file)
+    shown = shown_path(file)
     document = read_yaml(file, shown)
     if problems := schema_problems(document, "project"):
         raise Refused(problems)
     reading = Reading(knowledge, document, shown, file.parent)
     data = document.data
     contract = _contract(reading, data.get("contract", []))
-    certificates = _certificates(reading, data)
-    _steels(reading, data.get("steels", {}), certificates)
-    written = _joint_list(reading, data)
-    rows = [
-        row for place, joint in written if (row := joint_row(reading, joint, place, data.get("defaults", {}), contract))
-    ]
-    names: dict[str, Place] = {}
-    for row in rows:
-        if row.id in names:
-            reading.fault(
-                row.place, f"joint {row.id!r} stands here twice", f"first in {names[row.id]}", "give it another name"
-            )
-        names.setdefault(row.id, row.place)
+    certificates = certificate_list(reading, data["certificates"]["csv"]) if "certificates" in data else {}
+    read_steels(reading, data.get("steels", {}), certificates)
+    defaults = read_defaults(reading, reading.written("defaults", data=data.get("defaults", {})))
+    rows = [row for joint in _joints(reading) if (row := joint_row(reading, joint, defaults, contract))]
+    _refuse_twice(reading, rows)
     if reading.problems:
-        raise Refused(reading.problems)
+        raise Refused(dict.fromkeys(reading.problems))
     return _project(reading, rows, contract)
 
 
-def _shown(path: Path) -> str:
-    try:
-        return str(path.resolve().relative_to(Path.cwd()))
-    except ValueError:
-        return str(path)
+def _refuse_twice(reading: Reading, rows: list[JointRow]) -> None:
+    first: dict[str, Place] = {}
+    for row in rows:
+        if row.id in first:
+            what = f"joint {row.id!r} stands here twice"
+            reading.fault(row.place, what, f"first in {first[row.id]}", "give it another name")
+        first.setdefault(row.id, row.place)
 
 
 def _project(reading: Reading, rows: list[JointRow], contract: tuple[str, ...]) -> Project:
@@ -80,7 +72,7 @@ def _project(reading: Reading, rows: list[JointRow], contract: tuple[str, ...]) 
         "rules": str(data["rules"]),
         "joints": plain_facts(rows),
     }
-    steels = {name: steel_entry(steel) for name, steel in reading.steels.items()}
+    steels = {name: steel_entry(steel, reading.knowledge.quantities) for name, steel in reading.steels.items()}
     return Project(
         data["project"],
         data["title"],
@@ -109,87 +101,16 @@ def _contract(reading: Reading, names: list[str]) -> tuple[str, ...]:
     return tuple(name for name in names if name in known)
 
 
-def _certificates(reading: Reading, data: Mapping[str, Any]) -> dict[str, dict[str, Any]]:
-    if "certificates" not in data:
-        return {}
-    name = data["certificates"]["csv"]
-    try:
-        return dict(certificate_from(row) for row in read_rows(reading.folder / name, _shown(reading.folder / name)))
-    except Refused as refused:
-        reading.problems += refused.problems
-        return {}
-
-
-def _steels(reading: Reading, written: Mapping[str, Any], certificates: Mapping[str, dict[str, Any]]) -> None:
-    for name, said in written.items():
-        entry = said
-        place = reading.document.place("steels", name)
-        if "certificate" in entry:
-            number = str(entry["certificate"])
-            if number not in certificates:
-                reading.fault(
-                    reading.document.place("steels", name, "certificate"),
-                    f"certificate {number!r} is not in the list",
-                    do=nearest(number, certificates),
-                )
-            paper = certificates.get(number, {})
-            entry = _with_paper(entry, paper)
-        if not any(key in entry for key in ("composition", "samples", "grade", "era")):
-            reading.fault(
-                place,
-                f"nothing is said of steel {name!r}",
-                "a steel needs a composition, samples, a grade or an era",
-                "say what is known; for undocumented steel name its era",
-            )
-        grade = era = None
-        if "grade" in entry:
-            try:
-                grade = find_grade(str(entry["grade"]), reading.knowledge)
-            except NoSuchGrade as fault:
-                reading.fault(reading.document.place("steels", name, "grade"), str(fault))
-        if "era" in entry:
-            era = reading.knowledge.eras.get(str(entry["era"]))
-            if era is None:
-                reading.fault(
-                    reading.document.place("steels", name, "era"),
-                    f"{entry['era']!r} is no era known here",
-                    do=nearest(str(entry["era"]), reading.knowledge.eras),
-                )
-        reading.steels[name] = Steel(name, entry, grade, era, f"{place.file}:{place.line}")
-        try:
-            member_facts(reading.steels[name], Range(0.0, float("inf")))
-        except ValueError as fault:
-            reading.fault(place, f"steel {name!r}: {fault}")
-
-
-def _with_paper(entry: Mapping[str, Any], paper: Mapping[str, Any]) -> dict[str, Any]:
-    """What a project says of a steel on top of what its certificate says."""
-    return {
-        **paper,
-        **entry,
-        "origin": {**paper.get("origin", {}), **entry.get("origin", {})},
-        "composition": {**paper.get("composition", {}), **entry.get("composition", {})},
-    }
-
-
-def _joint_list(reading: Reading, data: Mapping[str, Any]) -> list[tuple[Place, dict[str, Any]]]:
-    """Every joint with its place, from the file itself and from weld lists."""
-    joints = data["joints"]
-    items: list[Any] = [joints] if isinstance(joints, dict) else joints
-    found: list[tuple[Place, dict[str, Any]]] = []
-    for number, item in enumerate(items):
-        place = (
-            reading.document.place("joints") if isinstance(joints, dict) else reading.document.place("joints", number)
-        )
+def _joints(reading: Reading) -> list[Written]:
+    """Every joint with the places of its parts, from the file itself and from weld lists."""
+    joints = reading.document.data["joints"]
+    found: list[Written] = []
+    for number, item in enumerate([joints] if isinstance(joints, dict) else joints):
         if set(item) == {"csv"}:
-            try:
-                rows = read_rows(reading.folder / item["csv"], _shown(reading.folder / item["csv"]))
-            except Refused as refused:
-                reading.problems += refused.problems
-                continue
-            found += [(row.place(), joint_from(row)) for row in rows]
+            fields = joint_fields(reading.knowledge), member_fields(reading.knowledge)
+            found += weld_list(reading, str(item["csv"]), *fields)
         else:
-            found.append((place, item))
+            found.append(reading.written("joints", number, data=item))
     if not found and not reading.problems:
         reading.fault(reading.document.place("joints"), "there is no joint here", do="list at least one joint")
     return found

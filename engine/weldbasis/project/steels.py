@@ -6,16 +6,15 @@ left to the vocabulary, which says what may be assumed and marks it.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Any
 
-from weldbasis.facts import Origin, OriginKind
-from weldbasis.knowledge import Consumable, Era, Grade
+from weldbasis.facts import Origin
+from weldbasis.knowledge import Era, Grade, Quantity
 from weldbasis.project.entries import SteelEntry
-from weldbasis.project.grades import limits_in
+from weldbasis.project.given import Fact, standing_in, within
+from weldbasis.project.grades import limits_in, reach_of
 from weldbasis.ranges import Range
-from weldbasis.units import read_number
 
 ELEMENTS: Mapping[str, str] = {
     "C": "carbon",
@@ -35,84 +34,59 @@ ELEMENTS: Mapping[str, str] = {
     "N": "nitrogen",
 }
 
-
 # The elements of each carbon equivalent that a grade may cap.
 _CAPPED: Mapping[str, frozenset[str]] = {
     "ce_iiw_limit": frozenset({"C", "Mn", "Cr", "Mo", "V", "Ni", "Cu"}),
     "pcm_limit": frozenset({"C", "Si", "Mn", "Cu", "Cr", "Ni", "Mo", "V", "B"}),
     "cet_limit": frozenset({"C", "Mn", "Mo", "Cr", "Cu", "Ni"}),
 }
-
-
-@dataclass(frozen=True)
-class Fact:
-    """One given value: a closed range, or levels, and its origin."""
-
-    value: Range | tuple[str, ...]
-    origin: Origin
-    assumed: bool = False
+# So many samples make an envelope of their own; fewer are joined with what the era or the grade allows.
+_ENOUGH_SAMPLES = 3
 
 
 @dataclass(frozen=True)
 class Steel:
-    """A steel of the project with its records looked up."""
+    """A steel of the project, read: its records looked up, its values with their origins.
+
+    `analysed` holds the elements of a certificate or another whole analysis, `said` what else the project gives
+    (strength, delivery, family, place of samples), both by quantity id; `samples` holds elements by symbol.
+    """
 
     id: str
-    written: Mapping[str, Any]
+    title: str
     grade: Grade | None
     era: Era | None
+    analysed: Mapping[str, Fact]
+    said: Mapping[str, Fact]
+    samples: tuple[Mapping[str, Range], ...]
+    paper: Origin
+    certificate: str
+    heat: str
+    delivery: str
     place: str
 
 
-def member_facts(steel: Steel, thickness: Range) -> dict[str, Fact]:
-    """Facts of a part made of a steel in a thickness, by quantity id. ValueError where a value cannot be read."""
+def member_facts(steel: Steel, thickness: Range | None, vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
+    """Facts of a part made of a steel, by quantity id; without a thickness (mm) those of any the grade is made in."""
     found: dict[str, Fact] = {}
     if steel.grade:
-        found |= _from_grade(steel.grade, thickness)
+        found |= _from_grade(steel.grade, thickness, vocabulary)
+    if steel.grade and steel.delivery in vocabulary["delivery"].order:
+        origin = Origin("grade-limit", f"+{steel.delivery} in the designation of {steel.id}", steel.place)
+        found["delivery"] = Fact((steel.delivery,), origin)
     if steel.era:
-        found |= _from_era(steel, steel.era)
-    if samples := steel.written.get("samples"):
-        found |= _from_samples(steel, samples)
-    if composition := steel.written.get("composition"):
-        origin = paper_of(steel)
-        found |= {ELEMENTS[e]: Fact(read_number(v, "%"), origin) for e, v in composition.items() if e in ELEMENTS}
-        for cap, elements in _CAPPED.items():
-            if elements <= set(composition):
-                found.pop(cap, None)  # a cap bounds what is not analysed; it never trims an analysis
-    return found | _own_words(steel)
-
-
-def _own_words(steel: Steel) -> dict[str, Fact]:
-    origin = paper_of(steel)
-    assumed = "because" in steel.written and "origin" not in steel.written
-    found: dict[str, Fact] = {}
-    if "yield_strength" in steel.written:
-        found["yield_strength"] = Fact(read_number(steel.written["yield_strength"], "MPa"), origin, assumed)
-    for field, quantity in (("delivery", "delivery"), ("family", "steel_family"), ("sample_place", "sample_place")):
-        if field in steel.written:
-            value = steel.written[field]
-            levels = tuple(value) if isinstance(value, list | tuple) else (str(value),)
-            found[quantity] = Fact(levels, origin, assumed)
+        found |= _from_era(steel.era, vocabulary, steel.place)
+    if steel.samples:
+        found |= _from_samples(steel, found, vocabulary)
+    found |= steel.analysed
+    for cap, elements in _CAPPED.items():
+        if all(ELEMENTS[element] in steel.analysed for element in elements):
+            found.pop(cap, None)  # a cap bounds what is not analysed; it never trims an analysis
+    found |= steel.said
     return found
 
 
-def paper_of(steel: Steel) -> Origin:
-    """The paper behind a steel's own values."""
-    origin = steel.written.get("origin", {})
-    if "certificate" in origin or "certificate" in steel.written:
-        number = origin.get("certificate", steel.written.get("certificate"))
-        heat = f", heat {origin['heat']}" if "heat" in origin else ""
-        return Origin("certificate", f"certificate {number}{heat}", steel.place)
-    if "laboratory" in origin:
-        return Origin("samples", f"laboratory report {origin['laboratory']}", steel.place)
-    if "drawing" in origin:
-        return Origin("drawing", f"drawing {origin['drawing']}", steel.place)
-    if "because" in steel.written:
-        return Origin("assumption", f"assumed: {steel.written['because']}", steel.place)
-    return Origin("project", str(origin.get("note", "as the project says, without a paper")), steel.place)
-
-
-def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
+def _from_grade(grade: Grade, thickness: Range | None, vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
     origin = Origin("grade-limit", f"limits of {grade.designation}, {grade.standard}")
     found = {"steel_family": Fact((grade.family,), origin)}
     if grade.delivery:
@@ -123,11 +97,11 @@ def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
         found["p_number"] = Fact((grade.p_number,), origin)
     limits = limits_in(grade, thickness)
     if limits is None:
-        return found
-    for element, (low, high) in limits.composition.items():
-        if element in ELEMENTS and high != float("inf"):
-            found[ELEMENTS[element]] = Fact(Range(low, high), origin)
-    for quantity, number in (
+        return found | _beyond(grade, vocabulary)
+    for element, quantity in ELEMENTS.items():
+        if limit := limits.composition.get(element):
+            found[quantity] = _limited(vocabulary[quantity], limit, element in limits.partly, origin)
+    for name, number in (
         ("ce_iiw_limit", limits.ce_iiw),
         ("ce_iiw_cap", limits.ce_iiw),
         ("pcm_cap", limits.pcm),
@@ -137,93 +111,109 @@ def _from_grade(grade: Grade, thickness: Range) -> dict[str, Fact]:
         ("tensile_strength", limits.tensile_min),
     ):
         if number is not None:
-            found[quantity] = Fact(Range(number, number), origin)
+            found[name] = Fact(Range(number, number), origin)
     return found
 
 
-def _from_era(steel: Steel, era: Era) -> dict[str, Fact]:
-    origin = Origin("era-envelope", f"envelope of {era.title}, {era.years}", steel.place)
+def _limited(quantity: Quantity, limit: Range, partly: bool, origin: Origin) -> Fact:
+    """What a standard allows of an element; where it leaves an end open, up to what the vocabulary allows."""
+    found = within(quantity, limit)
+    default = standing_in(quantity) if partly else None
+    if default and isinstance(default.value, Range):
+        found = Range(min(found.low, default.value.low), max(found.high, default.value.high))
+    if limit.high > quantity.range.high:
+        origin = Origin(origin.kind, f"{origin.text}, which sets no upper limit here", origin.place)
+    return Fact(found, origin)
+
+
+def _beyond(grade: Grade, vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
+    """Nothing is known of what a standard limits elsewhere, where it does not reach to a thickness."""
+    everywhere = limits_in(grade)
+    assert everywhere is not None
+    text = f"not known: {grade.standard} has {grade.designation} for {_thickness_text(reach_of(grade))} only"
+    origin = Origin("unknown", text)
+    return {
+        quantity: Fact(vocabulary[quantity].range, origin, unknown=True)
+        for element, quantity in ELEMENTS.items()
+        if element in everywhere.composition
+    }
+
+
+def _thickness_text(reach: Range) -> str:
+    """A range of thickness in words of the trade: "3 to 150 mm"."""
+    if reach.low <= 0:
+        return f"up to {reach.high:g} mm"
+    return f"above {reach.low:g} mm" if reach.high == float("inf") else f"{reach.low:g} to {reach.high:g} mm"
+
+
+def _from_era(era: Era, vocabulary: Mapping[str, Quantity], place: str) -> dict[str, Fact]:
+    """The era's envelope: from the least that is typical to the cautious ceiling."""
+    origin = Origin("era-envelope", f"envelope of {era.title}, {era.years}", place)
     found = {"steel_family": Fact((era.family,), origin), "steel_era": Fact((era.id,), origin)}
     for element, quantity in ELEMENTS.items():
         typical, ceiling = era.typical.get(element), era.ceilings.get(element)
         if typical or ceiling is not None:
             low = typical.low if typical else 0.0
             high = max(typical.high if typical else 0.0, ceiling or 0.0)
-            found[quantity] = Fact(Range(low, high), origin)
+            found[quantity] = Fact(within(vocabulary[quantity], Range(low, high)), origin)
     return found
 
 
-def _from_samples(steel: Steel, samples: Sequence[Mapping[str, Any]]) -> dict[str, Fact]:
-    """Envelope of the samples; with fewer than three it is joined with the era's typical range."""
-    few = len(samples) < 3 and steel.era is not None
-    text = f"{len(samples)} sample{'s' if len(samples) > 1 else ''}"
-    text += ", joined with the era's typical range" if few else ", least to greatest"
-    origin = Origin("samples", text, steel.place)
-    found: dict[str, Fact] = {"sample_count": Fact(Range(float(len(samples)), float(len(samples))), origin)}
+def _from_samples(steel: Steel, known: Mapping[str, Fact], vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
+    """Envelope of the samples, element by element; where they are few it is joined with what is known otherwise."""
+    count = float(len(steel.samples))
+    found = {"sample_count": Fact(Range(count, count), Origin("samples", _samples_text(int(count)), steel.place))}
     for element, quantity in ELEMENTS.items():
-        values = [read_number(sample[element], "%") for sample in samples if element in sample]
+        values = [sample[element] for sample in steel.samples if element in sample]
         if not values:
             continue
-        low, high = min(v.low for v in values), max(v.high for v in values)
-        typical = steel.era.typical.get(element) if few and steel.era else None
-        if typical:
-            low, high = min(low, typical.low), max(high, typical.high)
-        found[quantity] = Fact(Range(low, high), origin)
+        low, high = min(value.low for value in values), max(value.high for value in values)
+        text, alone = f"{_samples_text(len(values))}, least to greatest", False
+        if len(values) < _ENOUGH_SAMPLES:
+            other, whose = _else_known(steel, element, known.get(quantity))
+            if other:
+                low, high = min(low, other.low), max(high, other.high)
+            text = f"{_samples_text(len(values))}, {f'joined with {whose}' if other else 'too few to show a spread'}"
+            alone = other is None
+        value = within(vocabulary[quantity], Range(low, high))
+        found[quantity] = Fact(value, Origin("samples", text, steel.place), assumed=alone)
     return found
 
 
-def weld_metal_facts(written: Mapping[str, Any], consumable: Consumable | None, place: str) -> dict[str, Fact]:
-    """Facts of a joint's weld metal from its own analysis or its consumable's class; empty where neither is there."""
-    found: dict[str, Fact] = {}
-    if consumable:
-        origin = Origin("consumable", f"classification {consumable.id}", place)
-        found |= {ELEMENTS[e]: Fact(r, origin) for e, r in consumable.composition.items() if e in ELEMENTS}
-        if consumable.tensile:
-            found["tensile_strength"] = Fact(Range(consumable.tensile.low, consumable.tensile.low), origin)
-        if consumable.yield_min:
-            found["yield_strength"] = Fact(Range(consumable.yield_min, consumable.yield_min), origin)
-    origin = Origin(
-        "project", str(written.get("origin", {}).get("note", "analysis of the weld metal in the project")), place
-    )
-    if "certificate" in written.get("origin", {}):
-        origin = Origin("certificate", f"certificate {written['origin']['certificate']}", place)
-    found |= {
-        ELEMENTS[e]: Fact(read_number(v, "%"), origin)
-        for e, v in written.get("composition", {}).items()
-        if e in ELEMENTS
-    }
-    for field, unit in (("tensile_strength", "MPa"), ("yield_strength", "MPa")):
-        if field in written:
-            found[field] = Fact(read_number(written[field], unit), origin)
-    return found
+def _else_known(steel: Steel, element: str, known: Fact | None) -> tuple[Range | None, str]:
+    """What few samples are joined with: the era's typical range, else its ceiling, else the grade's limits."""
+    if steel.era and (typical := steel.era.typical.get(element)):
+        return typical, "the era's typical range"
+    if known and not known.unknown and isinstance(known.value, Range):
+        return known.value, "the era's envelope" if steel.era else "the grade's limits"
+    return None, ""
 
 
-def steel_entry(steel: Steel) -> SteelEntry:
-    """The steel as a page lists it, with its composition as ranges in a usual thickness."""
-    facts = member_facts(steel, Range(0.0, float("inf")))
-    by_quantity = {quantity: element for element, quantity in ELEMENTS.items()}
+def _samples_text(count: int) -> str:
+    return f"{count} sample{'s' if count > 1 else ''}"
+
+
+def steel_entry(steel: Steel, vocabulary: Mapping[str, Quantity]) -> SteelEntry:
+    """The steel as a page lists it, with its composition as ranges over any thickness its grade is made in."""
+    facts = member_facts(steel, None, vocabulary)
     composition = {
-        by_quantity[name]: (fact.value.low, fact.value.high)
-        for name, fact in facts.items()
-        if name in by_quantity and isinstance(fact.value, Range)
+        element: (fact.value.low, fact.value.high)
+        for element, quantity in ELEMENTS.items()
+        if (fact := facts.get(quantity)) and isinstance(fact.value, Range)
     }
-    origin = paper_of(steel)
-    kind: OriginKind = origin.kind
-    if not steel.written.get("composition"):
-        kind = "samples" if steel.written.get("samples") else "grade-limit" if steel.grade else "era-envelope"
-    written = steel.written.get("origin", {})
-    title = steel.written.get("title") or (
-        steel.grade.designation if steel.grade else steel.era.title if steel.era else steel.id
-    )
+    kind = steel.paper.kind
+    if not steel.analysed:
+        kind = "samples" if steel.samples else "grade-limit" if steel.grade else "era-envelope"
+    title = steel.title or (steel.grade.designation if steel.grade else steel.era.title if steel.era else steel.id)
     return SteelEntry(
         steel.id,
-        str(title),
+        title,
         steel.grade.id if steel.grade else "",
         steel.era.id if steel.era else "",
-        str(written.get("certificate", steel.written.get("certificate", ""))),
-        str(written.get("heat", "")),
+        steel.certificate,
+        steel.heat,
         kind,
         dict(sorted(composition.items())),
-        len(steel.written.get("samples", ())),
-        origin,
+        len(steel.samples),
+        steel.paper,
     )
