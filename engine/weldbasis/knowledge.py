@@ -230,9 +230,34 @@ class Case:
     place: Place = Place("")
 
 
+AmendedKind = Literal["rule", "quantity", "grade", "era", "consumable"]
+AmendmentHow = Literal["add", "replace", "tighten", "relax", "withdraw"]
+
+
+@dataclass(frozen=True)
+class Amendment:
+    """What a layer does to a record of the layers beneath it, and by whose leave.
+
+    `justified_by` names what allows asking for less than the layer beneath.
+    """
+
+    of: AmendedKind
+    id: str
+    how: AmendmentHow
+    why: str
+    approved_by: str
+    justified_by: str = ""
+    layer: str = ""
+    place: Place = Place("")
+
+
 @dataclass(frozen=True, eq=False)
 class Knowledge:
-    """A whole knowledge base, each kind of record by its id; two are the same when their digests are."""
+    """A whole knowledge base, each kind of record by its id; two are the same when their digests are.
+
+    `beneath` holds what the amendments replaced or withdrew, by kind and id, as it stood in the layer below.
+    `frozen` is the digest of the release it was read from, empty for a working set.
+    """
 
     title: str
     custodian: str
@@ -244,10 +269,16 @@ class Knowledge:
     eras: Mapping[str, Era]
     consumables: Mapping[str, Consumable]
     cases: tuple[Case, ...]
+    layers: tuple[str, ...] = ()
+    amendments: tuple[Amendment, ...] = ()
+    beneath: Mapping[tuple[str, str], Any] = field(default_factory=dict)
+    frozen: str = ""
 
     @cached_property
     def digest(self) -> str:
-        """The digest of all that decides; cases do not."""
+        """The digest of all that decides, cases do not; of a release, the one that is written in it."""
+        if self.frozen:
+            return self.frozen
         kinds = ("quantities", "rules", "sources", "grades", "eras", "consumables")
         return digest_of_meaning({kind: getattr(self, kind) for kind in kinds})
 

@@ -1,17 +1,19 @@
-"""A folder of knowledge into one frozen Knowledge: read, check against schemas, make records, check every reference."""
+"""Layers of files into one frozen Knowledge: checked against schemas, made records, stacked, references followed."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable
 from dataclasses import replace
 from functools import partial
 from pathlib import Path
-from typing import Any
 
-from weldbasis.knowledge import Knowledge
+from weldbasis.knowledge import Amendment, Knowledge
+from weldbasis.load.layer import AMENDMENTS, Layer, Layers
+from weldbasis.load.layers import read_layers
 from weldbasis.load.records import (
     BadRange,
     Maker,
+    amendments_from,
     case_from,
     consumable_from,
     era_from,
@@ -22,37 +24,21 @@ from weldbasis.load.records import (
 )
 from weldbasis.load.references import duplicate_problem, reference_problems
 from weldbasis.load.schema import RULE_KINDS, schema_problems
-from weldbasis.load.yaml_text import Document, Path_, read_yaml
-from weldbasis.problem import Place, Problem, Refused, nearest
+from weldbasis.load.stack import Records, Stacked, put_on, stacking_problems
+from weldbasis.load.yaml_text import Document, Path_
+from weldbasis.problem import Problem, Refused, nearest
+
+_KINDS = ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
 
 
 class _Reading:
-    """Records and problems gathered while a folder is read."""
+    """Records and problems gathered while a layer is read."""
 
-    def __init__(self, folder: Path) -> None:
-        self.folder = folder
-        self.problems: list[Problem] = []
-        self.read: dict[str, Document] = {}
-        self.found: dict[str, dict[str, Any]] = {
-            kind: {} for kind in ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
-        }
-
-    def documents(self, part: str) -> Iterator[Document]:
-        """Every file below a part of the folder, in order of name."""
-        for path in sorted((self.folder / part).rglob("*.yaml")):
-            try:
-                document = read_yaml(path, _shown(path))
-            except Refused as refused:
-                self.problems += refused.problems
-            else:
-                self.read[document.file] = document
-                yield document
-
-    def with_line(self, problem: Problem) -> Problem:
-        """A problem found in the records, with the line it stands in."""
-        document = self.read.get(problem.place.file)
-        shown = document.problem_at(problem.place, "").line_text if document else ""
-        return replace(problem, line_text=problem.line_text or shown)
+    def __init__(self, layer: Layer) -> None:
+        self.layer = layer
+        self.problems: list[Problem] = list(layer.problems)
+        self.found: Records = {kind: {} for kind in _KINDS}
+        self.amendments: list[Amendment] = []
 
     def fits(self, document: Document, kind: str, path: Path_ = ()) -> bool:
         """Whether a part of a document fits its schema; what does not is noted."""
@@ -73,65 +59,72 @@ class _Reading:
         known = self.found[kind]
         if record.id in known:
             problem = duplicate_problem(kind, record.id, record.place, known[record.id].place)
-            self.problems.append(self.with_line(problem))
+            self.problems.append(_with_line([self.layer], problem))
         known.setdefault(record.id, record)
 
 
-def load_knowledge(folder: Path, with_cases: bool = True) -> Knowledge:
-    """Read a knowledge base. Raises Refused with every problem of every file.
+def load_knowledge(folder: Path, with_cases: bool = True, release: str = "working") -> Knowledge:
+    """Read a set of rules in a folder, in its working state or as one of its releases.
 
-    Cases decide nothing; a command that only decides spares reading them.
+    Raises Refused with every problem of every file. Cases decide nothing; a command that only decides spares
+    reading them, and a release holds none.
     """
-    reading = _Reading(folder)
-    head = _head(reading, folder / "kb.yaml")
-    for document in reading.documents("quantities"):
+    return knowledge_of(read_layers(folder, with_cases, release))
+
+
+def knowledge_of(stack: Layers) -> Knowledge:
+    """Layers as one set of rules. Raises Refused with every problem of every file."""
+    stacked = Stacked({})
+    problems: list[Problem] = []
+    for layer in stack.layers:
+        reading = _read(layer)
+        problems += reading.problems
+        amendments = tuple(reading.amendments)
+        if layer is not stack.layers[0]:
+            problems += [_with_line(stack.layers, p) for p in stacking_problems(stacked, reading.found, amendments)]
+        stacked = put_on(stacked, reading.found, amendments)
+    if problems:
+        raise Refused(problems)
+    knowledge = _assembled(stack, stacked)
+    if found := list(reference_problems(knowledge)):
+        raise Refused(_with_line(stack.layers, problem) for problem in found)
+    return knowledge
+
+
+def _read(layer: Layer) -> _Reading:
+    """Every record of one layer; what is wrong is noted."""
+    reading = _Reading(layer)
+    for document in layer.part("quantities"):
         topic = Path(document.file).stem
         _list(reading, document, "quantities", "quantities", partial(quantity_from, topic=topic))
-    for document in reading.documents("rules"):
-        _rules(reading, document, head.get("layers", ["published"])[-1])
-    for document in reading.documents("sources"):
+    for document in layer.part("rules"):
+        _rules(reading, document, layer.name)
+    for document in layer.part("sources"):
         if reading.fits(document, "source"):
             reading.add("sources", source_from, document, ())
             _named_as_file(reading, document, "source")
-    for document in reading.documents("steels"):
+    for document in layer.part("steels"):
         if reading.fits(document, "steels"):
             for kind, make in (("grades", grade_from), ("eras", era_from)):
                 for place in range(len(document.data.get(kind, ()))):
                     reading.add(kind, make, document, (kind, place))
-    for document in reading.documents("consumables"):
+    for document in layer.part("consumables"):
         _list(reading, document, "consumables", "consumables", consumable_from)
-    for document in reading.documents("cases") if with_cases else ():
+    for document in layer.part("cases"):
         _list(reading, document, "cases", "cases", case_from)
-    if reading.problems:
-        raise Refused(reading.problems)
-    knowledge = _assembled(head, reading.found)
-    if problems := list(reference_problems(knowledge)):
-        raise Refused(map(reading.with_line, problems))
-    return knowledge
+    for document in layer.part(AMENDMENTS):
+        if reading.fits(document, "amendments"):
+            reading.amendments += amendments_from(document, layer.name)
+    return reading
 
 
-def _shown(path: Path) -> str:
-    """A file's name in messages: from the working folder where it lies below it."""
-    try:
-        return str(path.resolve().relative_to(Path.cwd()))
-    except ValueError:
-        return str(path)
-
-
-def _head(reading: _Reading, path: Path) -> dict[str, Any]:
-    if not path.exists():
-        raise Refused(
-            [
-                Problem(
-                    Place(str(path)),
-                    "there is no such file",
-                    "a folder of knowledge starts with kb.yaml",
-                    "name a folder that holds one",
-                )
-            ]
-        )
-    document = read_yaml(path, _shown(path))
-    return document.data if reading.fits(document, "kb") else {}
+def _with_line(layers: Iterable[Layer], problem: Problem) -> Problem:
+    """A problem found in the records, with the line it stands in."""
+    if problem.line_text:
+        return problem
+    documents = (document for layer in layers for document in layer.files.values())
+    document = next((found for found in documents if found.file == problem.place.file), None)
+    return replace(problem, line_text=document.problem_at(problem.place, "").line_text) if document else problem
 
 
 def _list(reading: _Reading, document: Document, kind: str, schema: str, make: Maker) -> None:
@@ -194,17 +187,22 @@ def _named_as_file(reading: _Reading, document: Document, what: str) -> None:
         )
 
 
-def _assembled(head: dict[str, Any], found: dict[str, dict[str, Any]]) -> Knowledge:
-    ordered = {kind: dict(sorted(records.items())) for kind, records in found.items()}
+def _assembled(stack: Layers, stacked: Stacked) -> Knowledge:
+    ordered = {kind: dict(sorted(records.items())) for kind, records in stacked.records.items()}
+    head = stack.head
     return Knowledge(
-        head["title"],
-        head["custodian"],
-        str(head["release"]),
-        ordered["quantities"],
-        ordered["rules"],
-        ordered["sources"],
-        ordered["grades"],
-        ordered["eras"],
-        ordered["consumables"],
-        tuple(ordered["cases"].values()),
+        title=head["title"],
+        custodian=head["custodian"],
+        release=str(head["release"]) if stack.release == "working" else stack.release,
+        quantities=ordered["quantities"],
+        rules=ordered["rules"],
+        sources=ordered["sources"],
+        grades=ordered["grades"],
+        eras=ordered["eras"],
+        consumables=ordered["consumables"],
+        cases=tuple(ordered["cases"].values()),
+        layers=tuple(layer.name for layer in stack.layers),
+        amendments=stacked.amendments,
+        beneath=stacked.beneath,
+        frozen=stack.frozen,
     )

@@ -6,6 +6,8 @@ from collections.abc import Callable, Iterator, Mapping
 from typing import Any
 
 from weldbasis.knowledge import (
+    AmendedKind,
+    Amendment,
     Case,
     Change,
     Cite,
@@ -42,6 +44,9 @@ _RULE_PARTS = frozenset(
         "changes",
     }
 )
+
+
+_AMENDED: tuple[AmendedKind, ...] = ("rule", "quantity", "grade", "era", "consumable")
 
 
 class BadRange(ValueError):
@@ -239,6 +244,22 @@ def case_from(data: Mapping[str, Any], document: Document, path: Path_) -> Case:
         note=data.get("note", ""),
         place=document.place(*path, "id"),
     )
+
+
+def amendments_from(document: Document, layer: str) -> Iterator[Amendment]:
+    """What a layer changes in those beneath it."""
+    for number, data in enumerate(document.data["amendments"]):
+        kind = next(key for key in _AMENDED if key in data)
+        yield Amendment(
+            of=kind,
+            id=data[kind],
+            how=data["how"],
+            why=data["why"],
+            approved_by=data["approved_by"],
+            justified_by=data.get("justified_by", ""),
+            layer=layer,
+            place=document.place("amendments", number, kind),
+        )
 
 
 Maker = Callable[[Mapping[str, Any], Document, Path_], Any]
