@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 
 import numpy as np
@@ -21,7 +21,8 @@ class Evaluation:
     """Every quantity's column, given or worked out, and where each limit rule raises its finding.
 
     `findings` maps a rule's id to the truth of its finding over the rows of the rule's scope. `facts.given`
-    tells what was given; a given value beats the rule that would have worked it out.
+    tells what was given; a given value beats the rule that would have worked it out, and `overruled` keeps what
+    that rule gave.
     """
 
     knowledge: Knowledge
@@ -29,6 +30,7 @@ class Evaluation:
     facts: Facts
     columns: Mapping[str, Column]
     findings: Mapping[str, Truth]
+    overruled: Mapping[str, Column] = field(default_factory=dict)
 
     @cached_property
     def views(self) -> Mapping[Scope, View]:
@@ -49,6 +51,7 @@ def evaluate(
     columns: dict[str, Column] = dict(facts.given)
     views = _views(knowledge, facts, columns)
     findings: dict[str, Truth] = {}
+    overruled: dict[str, Column] = {}
     with np.errstate(all="ignore"):
         for name in graph.order:
             if needed is not None and name not in needed:
@@ -57,13 +60,15 @@ def evaluate(
             view = views[rule.rule.for_each]
             for given, result in KINDS[rule.rule.kind].evaluate(rule, view).items():
                 columns[given] = _given_first(facts.given.get(given), result)
+                if given in facts.given:
+                    overruled[given] = result
             if rule.rule.kind == "limit":
                 findings[name] = violated(rule, view)
     for quantity in knowledge.quantities.values():
         if quantity.id not in columns:
             rows = views[quantity.of].rows
             columns[quantity.id] = absent_numbers(rows) if quantity.is_number else absent_levels(rows)
-    return Evaluation(knowledge, graph, facts, columns, findings)
+    return Evaluation(knowledge, graph, facts, columns, findings, overruled)
 
 
 def _given_first(given: Column | None, result: Column) -> Column:

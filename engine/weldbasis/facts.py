@@ -19,6 +19,7 @@ OriginKind = Literal[
     "project",
     "default",
     "assumption",
+    "concession",
     "unknown",
 ]
 
@@ -39,7 +40,8 @@ class Facts:
     `given` maps a quantity id to a column over joints or members, by the quantity's scope. A row that is
     ABSENT there was not given, and a rule that gives the quantity then fills it. `joint_of` holds, for every
     member row, the row of its joint, in rising order; the weld metal is the last member of every joint.
-    `origins` holds, for every row of a given column, a place in `origin_list`.
+    `origins` holds, for every row of a given column, a place in `origin_list`. `set_aside` holds, by limit rule,
+    the rows of joints whose finding a concession sets aside.
     """
 
     joints: tuple[str, ...]
@@ -48,3 +50,4 @@ class Facts:
     given: Mapping[str, Column]
     origins: Mapping[str, Ints] = field(default_factory=dict)
     origin_list: tuple[Origin, ...] = ()
+    set_aside: Mapping[str, Mapping[int, Origin]] = field(default_factory=dict)

@@ -277,11 +277,39 @@ def findings_of(
                 level = rule.body.level if sure else rule.body.level_if_unsure
                 if level != "none":
                     text = say(evaluation, rule, Value(), at)
-                    yield Finding(
-                        level, name, text if sure else f"{text} (not sure: {_unsure(rule, evaluation, at)})", sure
-                    )
+                    text = text if sure else f"{text} (not sure: {_unsure(rule, evaluation, at)})"
+                    leave = evaluation.facts.set_aside.get(name, {}).get(row)
+                    if leave:
+                        yield Finding("note", name, f"Set aside ({leave.text}): {text}", sure)
+                    else:
+                        yield Finding(level, name, text, sure)
+    yield from _conceded(evaluation, row)
     for quantity in evaluation.knowledge.decisions:
         yield from _undecided(evaluation, quantity, row, narrowings)
+
+
+def _conceded(evaluation: Evaluation, row: int) -> Iterator[Finding]:
+    """What a concession puts in the place of what the rules give, and whether that asks for less."""
+    for name, ruled in evaluation.overruled.items():
+        quantity = evaluation.knowledge.quantities[name]
+        origin = _origin(evaluation, name, row) if quantity.of == "joint" else None
+        if origin is None or origin.kind != "concession" or not may_be_at(evaluation.facts.given[name], row):
+            continue
+        value, instead = value_of(evaluation.columns[name], quantity, row), value_of(ruled, quantity, row)
+        words = {1: ", which asks for more", -1: ", which asks for less", 0: ""}[_asks(quantity, value, instead)]
+        text = f"{quantity.title} {value_text(quantity, value)} instead of {value_text(quantity, instead)}{words}"
+        yield Finding("caution", evaluation.graph.giving[name], f"{text}: {origin.text}.")
+
+
+def _asks(quantity: Quantity, value: Value, instead: Value) -> int:
+    """1 where the demanding end of a value asks for more than that of another, −1 for less, 0 where nobody can say."""
+    one, other = demanding_end(value, quantity), demanding_end(instead, quantity)
+    if one is None or other is None or one == other or quantity.worse == "neither":
+        return 0
+    if isinstance(one, str) or isinstance(other, str):
+        more = quantity.order.index(str(one)) > quantity.order.index(str(other))
+        return 1 if more == (quantity.worse == "last") else -1
+    return 1 if (one > other) == (quantity.worse == "higher") else -1
 
 
 def _unsure(rule: Compiled, evaluation: Evaluation, row: int) -> str:

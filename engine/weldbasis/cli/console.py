@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+import datetime
 import sys
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from functools import cache
 from pathlib import Path
@@ -13,9 +14,10 @@ from rich.console import Console
 from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
 
 from weldbasis.knowledge import Knowledge
-from weldbasis.load.knowledge import load_knowledge
-from weldbasis.places import kb_folder
+from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project, read_project
+from weldbasis.project.concessions import expired
+from weldbasis.project.pinned import rules_for
 
 CAUTION = (
     "Decisions support qualified judgement; the contract's code, the qualified procedure and the responsible "
@@ -26,7 +28,7 @@ kb_option = click.option(
     "--kb",
     type=click.Path(path_type=Path, exists=True, file_okay=False),
     default=None,
-    help="Rule set to use: a folder with kb.yaml. Without it, the published practice that comes with weldbasis.",
+    help="Rule set to use: a folder with kb.yaml. Without it: the project's house rules, else the published practice.",
 )
 json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON for a script instead of a table.")
 
@@ -39,14 +41,26 @@ def terminal() -> Console:
     return Console(highlight=False, width=80, color_system=None)
 
 
-def knowledge_from(folder: Path | None, with_cases: bool = False) -> Knowledge:
-    """The rule set a command works with; cases only where pages show them."""
-    return load_knowledge(folder or kb_folder(), with_cases)
+def rules_and_project(folder: Path, kb: Path | None, today: datetime.date | None = None) -> tuple[Knowledge, Project]:
+    """The rules that a project is decided with, and the project. Concessions that ran out before `today` stop it.
+
+    Without `today` the calendar does not count: a record is proved as of its own time.
+    """
+    knowledge = rules_for(folder, kb)
+    project = read_project(folder, knowledge)
+    if today and (problems := expired(project.concessions, today)):
+        raise Refused(problems)
+    return knowledge, project
 
 
-def project_from(folder: Path, knowledge: Knowledge) -> Project:
-    """The project a command works on."""
-    return read_project(folder, knowledge)
+def rules_for_all(folders: Sequence[Path], kb: Path | None) -> Knowledge:
+    """The one set of rules that several projects are decided with, with its cases."""
+    sets = [rules_for(folder, kb, with_cases=True) for folder in folders]
+    other = next((at for at, rules in zip(folders, sets, strict=True) if rules.digest != sets[0].digest), None)
+    if other is not None:
+        what = f"this project is decided with other rules than {folders[0]}"
+        raise Refused([Problem(Place(str(other)), what, "a site shows one set of rules", "publish them apart")])
+    return sets[0]
 
 
 def joint_row(project: Project, name: str) -> int:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 import json
 from collections import Counter
 from pathlib import Path
@@ -9,7 +10,7 @@ from pathlib import Path
 import click
 from rich.table import Table
 
-from weldbasis.cli.console import CAUTION, json_option, kb_option, knowledge_from, progress, project_from, terminal
+from weldbasis.cli.console import CAUTION, json_option, kb_option, progress, rules_and_project, terminal
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.project import Project
 from weldbasis.reasons import trace_joint
@@ -39,8 +40,7 @@ def command(project: Path, record: Path | None, no_record: bool, kb: Path | None
 
     Exit code 1 when a finding stops work on a joint.
     """
-    knowledge = knowledge_from(kb)
-    chosen = project_from(project, knowledge)
+    knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
     evaluation = evaluate(knowledge, chosen.facts)
     traces = decide_all(evaluation)
     data = record_from_traces(chosen, evaluation, traces)

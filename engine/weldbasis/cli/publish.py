@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from weldbasis.cli.console import kb_option, knowledge_from, progress
+from weldbasis.cli.console import kb_option, progress, rules_for_all
 from weldbasis.places import site_folder
 from weldbasis.site.publish import publish
 from weldbasis.words import counted
@@ -31,7 +31,7 @@ def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
     make is never replaced.
     """
     chosen = projects or tuple(sorted(p.parent for p in (site_folder() / "projects").glob("*/project.yaml")))
-    knowledge = knowledge_from(kb, with_cases=True)
+    knowledge = rules_for_all(chosen, kb)
     with progress("publishing", 100) as bar:
         task = bar.task_ids[0]
         made = publish(chosen, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total))

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from weldbasis.cli.console import kb_option, knowledge_from, project_from
+from weldbasis.cli.console import kb_option, rules_and_project
 from weldbasis.evaluate import evaluate
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.record import read_record, record_of, replay
@@ -45,8 +45,7 @@ def command(record: Path, folder: Path | None, kb: Path | None) -> None:
                 )
             ]
         )
-    knowledge = knowledge_from(kb)
-    project = project_from(place, knowledge)
+    knowledge, project = rules_and_project(place, kb)
     fresh = record_of(project, evaluate(knowledge, project.facts))
     found = replay(kept, fresh)
     if not found:

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import dataclasses
+import datetime
 import json
 from pathlib import Path
 
 import click
 from rich.padding import Padding
 
-from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, knowledge_from, project_from, terminal
+from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.problem import nearest
 from weldbasis.reasons import bears_on_text, trace_joint, value_text
@@ -36,8 +37,7 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
     Every line names the rule it comes from in brackets; `weldbasis publish` makes the same trace a page
     with a link to the rule and its source at every step.
     """
-    knowledge = knowledge_from(kb)
-    chosen = project_from(project, knowledge)
+    knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
     row = joint_row(chosen, joint)
     evaluation = evaluate(knowledge, chosen.facts)
     trace = trace_joint(evaluation, row)

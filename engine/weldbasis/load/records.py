@@ -102,7 +102,11 @@ def cites_from(data: Mapping[str, Any], default: tuple[Cite, ...] = ()) -> tuple
 
 
 def rule_from(data: Mapping[str, Any], document: Document, path: Path_, topic: str, layer: str) -> Rule:
-    """A rule; everything that is not common to all kinds is its body."""
+    """A rule; everything that is not common to all kinds is its body.
+
+    Keys stand in the order of the alphabet, as in a release, so that both give the same traces.
+    """
+    data = _in_order(data)
     gives = data.get("gives", ())
     places = {place[len(path) :]: at for place, at in document.places.items() if place[: len(path)] == path}
     return Rule(
@@ -127,6 +131,12 @@ def rule_from(data: Mapping[str, Any], document: Document, path: Path_, topic: s
         place=document.place(*path, "id"),
         places=places,
     )
+
+
+def _in_order(data: Any) -> Any:
+    if isinstance(data, Mapping):
+        return {key: _in_order(data[key]) for key in sorted(data)}
+    return [_in_order(item) for item in data] if isinstance(data, list) else data
 
 
 def reads_from(written: Any) -> Iterator[Read]:

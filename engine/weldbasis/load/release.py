@@ -19,7 +19,7 @@ from weldbasis.problem import Place, Problem, Refused
 
 FORMAT = "weldbasis-release/1"
 # What the digest of a release is taken of.
-_SEALED = ("format", "release", "engine", "follows", "layers")
+_SEALED = ("format", "release", "date", "engine", "follows", "layers")
 
 
 @dataclass(frozen=True)

@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from weldbasis.facts import Facts, Origin
+from weldbasis.problem import Place
 
 
 @dataclass(frozen=True)
@@ -39,6 +40,24 @@ class SteelEntry:
 
 
 @dataclass(frozen=True)
+class Concession:
+    """Leave for some joints: `quantity` is taken as given, or the finding of the limit rule `finding` is set aside."""
+
+    joints: tuple[str, ...]
+    quantity: str
+    finding: str
+    why: str
+    approved_by: str
+    until: str
+    place: Place
+
+    @property
+    def origin(self) -> Origin:
+        """Where a conceded value comes from, as traces show it."""
+        return Origin("concession", f"concession by {self.approved_by} until {self.until}: {self.why}", str(self.place))
+
+
+@dataclass(frozen=True)
 class Project:
     """A project, read and checked."""
 
@@ -52,3 +71,4 @@ class Project:
     facts: Facts
     meaning: Mapping[str, Any]
     description: str = ""
+    concessions: tuple[Concession, ...] = ()

@@ -2,41 +2,28 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 from weldbasis.knowledge import Knowledge
-from weldbasis.load.schema import schema_problems
-from weldbasis.load.yaml_text import read_yaml
-from weldbasis.problem import Place, Problem, Refused, nearest
+from weldbasis.problem import Place, Refused, nearest
 from weldbasis.project.columns import JointRow, facts_from_rows, plain_facts
-from weldbasis.project.entries import JointEntry, Project
+from weldbasis.project.concessions import plain_concessions, set_aside, with_concessions
+from weldbasis.project.entries import Concession, JointEntry, Project
 from weldbasis.project.joints import joint_fields, joint_row, read_defaults
 from weldbasis.project.lists import certificate_list, weld_list
 from weldbasis.project.members import member_fields
-from weldbasis.project.reading import Reading, Written, shown_path
+from weldbasis.project.pinned import project_document
+from weldbasis.project.reading import Reading, Written
 from weldbasis.project.steel_list import read_steels
 from weldbasis.project.steels import steel_entry
 
 
 def read_project(path: Path, knowledge: Knowledge) -> Project:
     """Read the project in a folder (or its project.yaml). Raises Refused with every problem."""
-    file = path / "project.yaml" if path.is_dir() else path
-    if not file.exists():
-        raise Refused(
-            [
-                Problem(
-                    Place(str(file)),
-                    "there is no such file",
-                    "a project is a folder with a project.yaml",
-                    f"make one with: weldbasis start {path}",
-                )
-            ]
-        )
-    shown = shown_path(file)
-    document = read_yaml(file, shown)
-    if problems := schema_problems(document, "project"):
-        raise Refused(problems)
-    reading = Reading(knowledge, document, shown, file.parent)
+    document = project_document(path)
+    folder = path if path.is_dir() else path.parent
+    reading = Reading(knowledge, document, document.file, folder)
     data = document.data
     contract = _contract(reading, data.get("contract", []))
     certificates = certificate_list(reading, data["certificates"]["csv"]) if "certificates" in data else {}
@@ -44,9 +31,10 @@ def read_project(path: Path, knowledge: Knowledge) -> Project:
     defaults = read_defaults(reading, reading.written("defaults", data=data.get("defaults", {})))
     rows = [row for joint in _joints(reading) if (row := joint_row(reading, joint, defaults, contract))]
     _refuse_twice(reading, rows)
+    rows, concessions = with_concessions(reading, rows)
     if reading.problems:
         raise Refused(dict.fromkeys(reading.problems))
-    return _project(reading, rows, contract)
+    return _project(reading, rows, contract, concessions)
 
 
 def _refuse_twice(reading: Reading, rows: list[JointRow]) -> None:
@@ -58,13 +46,17 @@ def _refuse_twice(reading: Reading, rows: list[JointRow]) -> None:
         first.setdefault(row.id, row.place)
 
 
-def _project(reading: Reading, rows: list[JointRow], contract: tuple[str, ...]) -> Project:
+def _project(
+    reading: Reading, rows: list[JointRow], contract: tuple[str, ...], concessions: tuple[Concession, ...]
+) -> Project:
     data = reading.document.data
     entries = tuple(
         JointEntry(row.id, row.title, row.form, tuple(m.name for m in row.members), str(row.place), row.note)
         for row in rows
     )
-    facts = facts_from_rows(reading.knowledge, rows)
+    facts = replace(
+        facts_from_rows(reading.knowledge, rows), set_aside=set_aside(concessions, [row.id for row in rows])
+    )
     meaning = {
         "project": data["project"],
         "title": data["title"],
@@ -72,6 +64,8 @@ def _project(reading: Reading, rows: list[JointRow], contract: tuple[str, ...]) 
         "rules": str(data["rules"]),
         "joints": plain_facts(rows),
     }
+    if aside := plain_concessions(concessions):
+        meaning["set_aside"] = aside
     steels = {name: steel_entry(steel, reading.knowledge.quantities) for name, steel in reading.steels.items()}
     return Project(
         data["project"],
@@ -84,6 +78,7 @@ def _project(reading: Reading, rows: list[JointRow], contract: tuple[str, ...]) 
         facts,
         meaning,
         data.get("description", ""),
+        concessions,
     )
 
 
