@@ -205,7 +205,7 @@ def test_meaning_without_a_new_version_is_refused_spelling_is_not(house: Path) -
     assert moved(house) == [
         "rule heat-input-arc asks for something else than in release 2027.1, and is still version 1"
     ]
-    change(arc, '"0.80 * U * I * (60 / v / 1000) * 1"', '" 0.80 *U * I*60 / v/1e3"')
+    change(arc, '"0.80 * U * I * (60 / v / 1000) * 1"', '"0.80 *U * I*60 / v/1e3"')
     change(arc, "kind: formula\n", "")
     change(arc, "id: heat-input-arc\n", "kind: formula   # a comment\nid: heat-input-arc\n")
     change(house / TABLE, '"(30, 100]", restraint: high', '" ( 30.0, 100 ]", restraint: high')
