@@ -90,9 +90,6 @@ def _same_version(rule: Rule, old: Rule, difference: Difference, release: str) -
         why = "; ".join(difference.parts[:3])
         do = f"write version: {old.version + 1}, and say under changes what and why"
         yield Problem(place, what, why, do)
-    elif rule.version > old.version and rule.version not in {entry.version for entry in rule.changes}:
-        what = f"rule {rule.id} is version {rule.version}, and its changes do not say why"
-        yield Problem(place, what, "a new version has its entry", f"add an entry for version {rule.version}")
 
 
 def knowledge_of_release(release: Release) -> Knowledge:
