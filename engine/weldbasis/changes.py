@@ -62,7 +62,7 @@ def _difference(
         return "added", kind != "source", ()
     if new is None:
         return "withdrawn", kind != "source", ()
-    if meaning_of(old) == meaning_of(new):
+    if old is new or old == new or meaning_of(old) == meaning_of(new):
         return None
     moved = tuple(_moved(bearing_of(old), bearing_of(new)))
     if moved and kind != "source":

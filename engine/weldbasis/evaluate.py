@@ -39,15 +39,21 @@ class Evaluation:
 
 
 def evaluate(
-    knowledge: Knowledge, facts: Facts, graph: KnowledgeGraph | None = None, wanted: Iterable[str] | None = None
+    knowledge: Knowledge,
+    facts: Facts,
+    graph: KnowledgeGraph | None = None,
+    wanted: Iterable[str] | None = None,
+    kept: Evaluation | None = None,
 ) -> Evaluation:
     """Work out every quantity of every joint, or only what the `wanted` quantities rest on.
 
-    `graph` spares building it again when several projects are evaluated. Raises Refused where the rules
+    `graph` spares building it again when several projects are evaluated. `kept` is what other rules made of the
+    same facts: what does not rest on a rule that differs is taken from it. Raises Refused where the rules
     themselves cannot be used.
     """
     graph = graph or build_graph(knowledge)
     needed = None if wanted is None else graph.rules_for(tuple(wanted))
+    same = _untouched(kept, graph) if kept else frozenset()
     columns: dict[str, Column] = dict(facts.given)
     views = _views(knowledge, facts, columns)
     findings: dict[str, Truth] = {}
@@ -58,6 +64,12 @@ def evaluate(
                 continue
             rule = graph.rules[name]
             view = views[rule.rule.for_each]
+            if kept and name in same:
+                columns |= {q.id: kept.columns[q.id] for q in rule.gives}
+                overruled |= {q.id: kept.overruled[q.id] for q in rule.gives if q.id in kept.overruled}
+                if name in kept.findings:
+                    findings[name] = kept.findings[name]
+                continue
             for given, result in KINDS[rule.rule.kind].evaluate(rule, view).items():
                 columns[given] = _given_first(facts.given.get(given), result)
                 if given in facts.given:
@@ -69,6 +81,22 @@ def evaluate(
             rows = views[quantity.of].rows
             columns[quantity.id] = absent_numbers(rows) if quantity.is_number else absent_levels(rows)
     return Evaluation(knowledge, graph, facts, columns, findings, overruled)
+
+
+def _untouched(kept: Evaluation, graph: KnowledgeGraph) -> frozenset[str]:
+    """The rules that are the same in both sets, down to everything they rest on."""
+    rules, quantities = kept.graph.rules, kept.knowledge.quantities
+    same: set[str] = set()
+    for name in graph.order:
+        rule = graph.rules[name]
+        above = [graph.giving[read] for read in rule.inputs if read in graph.giving]
+        reads = all(quantities.get(q.quantity.id) == q.quantity for q in rule.reads)
+        gives = all(quantities.get(q.id) == q for q in rule.gives)
+        unchanged = name in rules and rules[name].rule == rule.rule and reads and gives
+        roots = all(kept.graph.giving.get(read) == graph.giving.get(read) for read in rule.inputs)
+        if unchanged and roots and all(giver in same for giver in above):
+            same.add(name)
+    return frozenset(same)
 
 
 def _given_first(given: Column | None, result: Column) -> Column:

@@ -6,7 +6,7 @@ import numpy as np
 
 from weldbasis.knowledge import Quantity
 from weldbasis.trace import DecisionState, Value
-from weldbasis.values import ABSENT, PRESENT, Bools, Column, Numbers
+from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Numbers
 
 
 def state_of(value: Value, quantity: Quantity) -> DecisionState:
@@ -42,3 +42,19 @@ def demanding_end(value: Value, quantity: Quantity) -> float | str | None:
             return None
         return value.any_of[-1] if quantity.worse == "last" else value.any_of[0]
     return value.high if quantity.worse == "higher" else value.low
+
+
+def demand(column: Column, quantity: Quantity) -> Floats | None:
+    """How much the demanding end of every row asks for, in rising order; −∞ where nothing is asked.
+
+    None where the vocabulary states no demanding end.
+    """
+    if quantity.worse == "neither":
+        return None
+    if isinstance(column, Numbers):
+        worth = column.high if quantity.worse == "higher" else -column.low
+    else:
+        bits = (column.mask[:, None] >> np.arange(len(quantity.order), dtype=np.uint64)) & np.uint64(1)
+        last = len(quantity.order) - 1 - np.argmax(bits[:, ::-1], axis=1)
+        worth = (last if quantity.worse == "last" else -np.argmax(bits, axis=1)).astype(np.float64)
+    return np.where(column.presence == ABSENT, -np.inf, worth)

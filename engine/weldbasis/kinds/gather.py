@@ -164,6 +164,25 @@ def explain_gather(compiled: Compiled, view: View, row: int) -> Explanation:
     return Explanation("", tuple(candidates))
 
 
+def governing_members(compiled: Compiled, view: View) -> Bools:
+    """The members that govern what is gathered; the same judgement as for one joint."""
+    body: Gather = compiled.body
+    members = view.members
+    column = members.column(body.of.id)
+    result = evaluate_gather(compiled, view)[compiled.gives[0].id].take(members.joint_of)
+    counts = _likely(body, members).may & is_there(column).may
+    if isinstance(column, Levels) and isinstance(result, Levels):
+        among: Bools = counts & ((column.mask & result.mask) != 0)
+        return among
+    assert isinstance(column, Numbers)
+    assert isinstance(result, Numbers)
+    if body.take in ("sum", "thickest", "any"):
+        return counts
+    same = column.low == result.low if body.lowest else column.high == result.high
+    governs: Bools = counts & (same | ~is_there(result).may)
+    return governs
+
+
 def _likely(body: Gather, members: View) -> Truth:
     wanted = judge(body.where, members) if body.where else Truth(members.all_true, members.all_true)
     return wanted & _may_be_thickest(body, members, wanted) if body.take == "thickest" else wanted

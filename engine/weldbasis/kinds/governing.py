@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,6 +15,7 @@ from weldbasis.reading import value_of
 from weldbasis.trace import Candidate, Ref, Value
 from weldbasis.values import (
     Bits,
+    Bools,
     Bytes,
     Column,
     Floats,
@@ -246,6 +247,33 @@ def explain_governing(compiled: Compiled, view: View, row: int) -> Explanation:
             )
         )
     return Explanation("", tuple(candidates))
+
+
+def governing_choices(compiled: Compiled, view: View) -> Iterator[tuple[str, Bools]]:
+    """Every candidate with the rows in which it governs; the same judgement as for one row."""
+    body: Governing = compiled.body
+    given = compiled.gives[0]
+    result = evaluate_governing(compiled, view)[given.id]
+    open_still = is_there(result).may
+    for choice, (column, there) in zip(body.choices, _standing(compiled, view), strict=True):
+        governs = open_still & there.may
+        if body.take == "first":
+            open_still = open_still & ~there.surely
+        elif isinstance(column, Numbers) and isinstance(result, Numbers):
+            same = column.high == result.high if body.take == "highest" else column.low == result.low
+            governs = governs & same
+        elif isinstance(column, Levels) and isinstance(result, Levels):
+            worst = _worst_bit(result.mask, (body.take == "lowest") != body.reverse, len(given.order))
+            governs = governs & ((column.mask & worst) != 0)
+        yield choice.quantity.id, governs
+
+
+def _worst_bit(mask: Bits, lowest: bool, count: int) -> Bits:
+    found = np.zeros(len(mask), np.uint64)
+    for place in range(count - 1, -1, -1) if lowest else range(count):
+        bit = np.uint64(1 << place)
+        found = np.where(mask & bit, bit, found)
+    return found
 
 
 def _governs(body: Governing, value: Value, result: Value, given: Quantity) -> bool:

@@ -63,12 +63,14 @@ def facts_from_rows(knowledge: Knowledge, rows: Sequence[JointRow]) -> Facts:
         default = _default_cell(quantity)
         if default is _NOTHING and quantity.id not in said:
             continue
+        made: dict[int, _Cell] = {}  # parts of one steel share their facts
         if quantity.of == "joint":
-            cells = [_cell(quantity, row.facts.get(quantity.id), default) for row in rows]
+            cells = [_cell(quantity, row.facts.get(quantity.id), default, made) for row in rows]
         else:
             # What nothing is known of in weld metal stays absent: a residual range of parent plate says nothing of it.
             cells = [
-                _cell(quantity, m.facts.get(quantity.id), _NOTHING if m.weld_metal else default) for _, m in members
+                _cell(quantity, m.facts.get(quantity.id), _NOTHING if m.weld_metal else default, made)
+                for _, m in members
             ]
         if all(cell.presence == ABSENT for cell in cells):
             continue
@@ -91,12 +93,18 @@ def _default_cell(quantity: Quantity) -> _Cell:
         return _NOTHING
     if quantity.id in ELEMENTS.values() and not fact.unknown:
         fact = Fact(fact.value, Origin("assumption", fact.origin.text), assumed=True)
-    return _cell(quantity, fact, _NOTHING)
+    return _cell(quantity, fact, _NOTHING, {})
 
 
-def _cell(quantity: Quantity, fact: Fact | None, default: _Cell) -> _Cell:
+def _cell(quantity: Quantity, fact: Fact | None, default: _Cell, made: dict[int, _Cell]) -> _Cell:
     if fact is None:
         return default
+    if id(fact) not in made:
+        made[id(fact)] = _made(quantity, fact)
+    return made[id(fact)]
+
+
+def _made(quantity: Quantity, fact: Fact) -> _Cell:
     flags = (int(ASSUMED) if fact.assumed else 0) | (int(UNKNOWN) if fact.unknown else 0)
     return _filled(quantity, fact.value, flags, fact.origin)
 

@@ -31,7 +31,8 @@ def with_concessions(reading: Reading, rows: Sequence[JointRow]) -> tuple[list[J
             elif fact:
                 facts[name][concession.quantity] = fact
         found.append(concession)
-    return [replace(row, facts={**row.facts, **facts.get(row.id, {})}) for row in rows], tuple(found)
+    conceded = [replace(row, facts={**row.facts, **facts[row.id]}) if row.id in facts else row for row in rows]
+    return conceded, tuple(found)
 
 
 def _concession(reading: Reading, written: Written, names: Sequence[str]) -> Concession:

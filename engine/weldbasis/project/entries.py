@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
@@ -69,6 +70,11 @@ class Project:
     joints: tuple[JointEntry, ...]
     steels: Mapping[str, SteelEntry]
     facts: Facts
-    meaning: Mapping[str, Any]
+    plain: Callable[[], Mapping[str, Any]] = field(compare=False, repr=False)
     description: str = ""
     concessions: tuple[Concession, ...] = ()
+
+    @cached_property
+    def meaning(self) -> Mapping[str, Any]:
+        """All inputs as plain data, whose digest names them."""
+        return self.plain()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import Any
 
 from weldbasis.facts import Origin
@@ -37,6 +38,7 @@ class Defaults:
     written: Written
 
 
+@lru_cache(maxsize=4)
 def joint_fields(knowledge: Knowledge) -> tuple[str, ...]:
     """Everything that a joint may say, by name."""
     given = (q.id for q in knowledge.quantities.values() if q.of == "joint" and q.given != "never")
@@ -146,8 +148,13 @@ def _with_reasons(reading: Reading, written: Written, facts: dict[str, Fact], wh
 def _contract_facts(knowledge: Knowledge, contract: tuple[str, ...], place: str) -> dict[str, Fact]:
     """Which requirement sets bind the joint; a joint's own word counts before the project's list."""
     origin = Origin("project", "the project's contract list", place)
-    sets = {q: q.removeprefix("contract_").replace("_", "-") for q in knowledge.quantities if q.startswith("contract_")}
-    return {q: Fact(("yes" if name in contract else "no",), origin) for q, name in sets.items()}
+    return {q: Fact(("yes" if name in contract else "no",), origin) for q, name in _requirement_sets(knowledge)}
+
+
+@lru_cache(maxsize=4)
+def _requirement_sets(knowledge: Knowledge) -> tuple[tuple[str, str], ...]:
+    names = [quantity for quantity in knowledge.quantities if quantity.startswith("contract_")]
+    return tuple((name, name.removeprefix("contract_").replace("_", "-")) for name in names)
 
 
 def _consumable(

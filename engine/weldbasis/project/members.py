@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import replace
+from functools import lru_cache
 from typing import Any
 
 from weldbasis.facts import Origin
@@ -20,6 +21,7 @@ _PLACES = ("member_role", "member_number")
 _WELD_METAL = ("composition", "origin", "tensile_strength", "yield_strength")
 
 
+@lru_cache(maxsize=4)
 def member_fields(knowledge: Knowledge) -> tuple[str, ...]:
     """Everything that a part may say, by name; `thickness` is short for `member_thickness`."""
     quantities = knowledge.quantities.values()

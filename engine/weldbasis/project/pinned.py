@@ -6,12 +6,13 @@ from pathlib import Path
 
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
-from weldbasis.load.release import release_names
+from weldbasis.load.release import read_release, release_names
 from weldbasis.load.schema import schema_problems
 from weldbasis.load.yaml_text import Document, read_yaml
 from weldbasis.places import kb_folder
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project.reading import shown_path
+from weldbasis.releases import knowledge_of_release
 
 
 def project_document(path: Path) -> Document:
@@ -51,3 +52,17 @@ def rules_for(path: Path, kb: Path | None = None, with_cases: bool = False) -> K
         why, do = f"it would lie in {folder / 'releases'}; there are: {known}", "restore it, or pin one that is there"
         raise Refused([document.problem(("rules",), what, why, do)])
     return load_knowledge(folder, with_cases, release)
+
+
+def rules_named(word: str, folder: Path, with_cases: bool = False) -> Knowledge:
+    """A set of rules by a word: `working`, a release of the set in `folder`, a release's file, or another folder.
+
+    Raises Refused where it is none of these, and says what there is.
+    """
+    path = Path(word)
+    if word.endswith(".json") and path.is_file():
+        release = read_release(path)
+        return knowledge_of_release(release)
+    if (path / "kb.yaml").is_file():
+        return load_knowledge(path, with_cases)
+    return load_knowledge(folder, with_cases, word)

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Place, Refused, nearest
@@ -57,15 +59,6 @@ def _project(
     facts = replace(
         facts_from_rows(reading.knowledge, rows), set_aside=set_aside(concessions, [row.id for row in rows])
     )
-    meaning = {
-        "project": data["project"],
-        "title": data["title"],
-        "contract": list(contract),
-        "rules": str(data["rules"]),
-        "joints": plain_facts(rows),
-    }
-    if aside := plain_concessions(concessions):
-        meaning["set_aside"] = aside
     steels = {name: steel_entry(steel, reading.knowledge.quantities) for name, steel in reading.steels.items()}
     return Project(
         data["project"],
@@ -76,10 +69,25 @@ def _project(
         entries,
         steels,
         facts,
-        meaning,
+        lambda: _meaning(data, contract, rows, concessions),
         data.get("description", ""),
         concessions,
     )
+
+
+def _meaning(
+    data: Mapping[str, Any], contract: tuple[str, ...], rows: list[JointRow], concessions: tuple[Concession, ...]
+) -> dict[str, Any]:
+    """All inputs as plain data; a project that sets no finding aside says nothing of it."""
+    aside = plain_concessions(concessions)
+    return {
+        "project": data["project"],
+        "title": data["title"],
+        "contract": list(contract),
+        "rules": str(data["rules"]),
+        "joints": plain_facts(rows),
+        **({"set_aside": aside} if aside else {}),
+    }
 
 
 def _contract(reading: Reading, names: list[str]) -> tuple[str, ...]:
