@@ -50,6 +50,48 @@ def test_start_never_overwrites(started: Path) -> None:
     assert "this file exists already" in done.stderr
 
 
+def test_a_house_starts_sound_and_is_released_and_pinned(tmp_path: Path) -> None:
+    """The house of the README: started, vetted, frozen, pinned by a project; then a release that is missing."""
+    assert run("start", "--house", "yard", cwd=tmp_path).returncode == 0
+    done = run("vet", "yard", "--quiet", cwd=tmp_path)
+    assert done.returncode == 0, done.stdout
+    assert "0 findings that stop work" in done.stdout
+    done = run("freeze", "2027.1", "--kb", "yard", "--on", "2027-01-15", cwd=tmp_path)
+    assert done.returncode == 0, done.stderr
+    assert "not signed" in done.stdout
+    assert "## 2027.1 (2027-01-15)" in (tmp_path / "yard/NEWS.md").read_text(encoding="utf-8")
+    done = run("freeze", "2027.1", "--kb", "yard", cwd=tmp_path)
+    assert (done.returncode, "release '2027.1' exists already" in done.stderr) == (2, True)
+    run("start", "bridge", cwd=tmp_path)
+    project = tmp_path / "bridge/project.yaml"
+    text = project.read_text(encoding="utf-8")
+    project.write_text(text.replace("rules: working", 'rules: "2027.1"\nhouse: ../yard'), encoding="utf-8")
+    done = run("decide", "bridge", cwd=tmp_path)
+    assert done.returncode == 0, done.stderr
+    assert "not released" not in done.stdout
+    record = json.loads((tmp_path / "bridge/record.json").read_text(encoding="utf-8"))
+    release = json.loads((tmp_path / "yard/releases/2027.1.json").read_text(encoding="utf-8"))
+    assert record["rules"] == {"release": "2027.1", "digest": release["digest"]}
+    assert run("replay", "bridge/record.json", cwd=tmp_path).returncode == 0
+    (tmp_path / "yard/releases/2027.1.json").unlink()
+    done = run("decide", "bridge", cwd=tmp_path)
+    assert done.returncode == 2
+    assert "the project is pinned to release '2027.1', which is missing" in done.stderr
+    assert "there are: none" in done.stderr
+
+
+def test_freeze_refuses_a_meaning_that_moved_under_its_version(tmp_path: Path) -> None:
+    run("start", "--house", "yard", cwd=tmp_path)
+    run("freeze", "2027.1", "--kb", "yard", cwd=tmp_path)
+    rule = tmp_path / "yard/rules/house/house-thick-plate-preheat.yaml"
+    rule.write_text(rule.read_text(encoding="utf-8").replace("> 60", "> 50"), encoding="utf-8")
+    for words in (("freeze", "2027.2", "--kb", "yard"), ("vet", "yard", "--quiet")):
+        done = run(*words, cwd=tmp_path)
+        assert done.returncode == 1
+        assert "asks for something else than in release 2027.1, and is still version 1" in done.stdout + done.stderr
+    assert not (tmp_path / "yard/releases/2027.2.json").exists()
+
+
 def test_replay_agrees_then_names_the_joint_that_was_changed(started: Path) -> None:
     run("decide", "quay-crane", cwd=started)
     record = started / "quay-crane" / "record.json"

@@ -298,7 +298,7 @@ def _conceded(evaluation: Evaluation, row: int) -> Iterator[Finding]:
         value, instead = value_of(evaluation.columns[name], quantity, row), value_of(ruled, quantity, row)
         words = {1: ", which asks for more", -1: ", which asks for less", 0: ""}[_asks(quantity, value, instead)]
         text = f"{quantity.title} {value_text(quantity, value)} instead of {value_text(quantity, instead)}{words}"
-        yield Finding("caution", evaluation.graph.giving[name], f"{text}: {origin.text}.")
+        yield Finding("caution", evaluation.graph.giving[name], f"{text}: {origin.text}")
 
 
 def _asks(quantity: Quantity, value: Value, instead: Value) -> int:

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from dataclasses import dataclass
+from collections.abc import Iterable, Iterator
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -11,6 +11,7 @@ import numpy as np
 from weldbasis.cases import CaseResult, run_cases
 from weldbasis.formula import slopes
 from weldbasis.graph import KnowledgeGraph, build_graph, quantity_node
+from weldbasis.house import amended_records, house_problems
 from weldbasis.kinds import Compiled
 from weldbasis.kinds.condition import bounds_on
 from weldbasis.kinds.table import Table, describe_cell
@@ -57,6 +58,7 @@ def vet(knowledge: Knowledge) -> VetReport:
     findings = [*case_findings(cases), *uncased_rules(knowledge), *unused_parts(knowledge, graph)]
     for rule in graph.rules.values():
         findings += [*table_gaps(rule), *unused_rows(rule), *wrong_directions(rule), *missing_papers(rule)]
+    findings += [from_problem(problem, "amendments") for problem in house_problems(amended_records(knowledge))]
     counts = {
         "quantities": len(knowledge.quantities),
         "rules": len(knowledge.rules),
@@ -70,10 +72,16 @@ def vet(knowledge: Knowledge) -> VetReport:
     return VetReport(tuple(sorted(findings)), cases, counts)
 
 
-def from_problem(problem: Problem) -> VetFinding:
-    """A problem of loading as a finding that stops work."""
+def with_problems(report: VetReport, problems: Iterable[Problem], check: str) -> VetReport:
+    """A report with problems found elsewhere added to its findings."""
+    found = [from_problem(problem, check) for problem in problems]
+    return replace(report, findings=tuple(sorted([*report.findings, *found])))
+
+
+def from_problem(problem: Problem, check: str = "reading") -> VetFinding:
+    """A problem as a finding that stops work."""
     what = problem.what + (f" ({problem.why})" if problem.why else "")
-    return VetFinding(problem.place, "stop", "reading", what, problem.do)
+    return VetFinding(problem.place, "stop", check, what, problem.do)
 
 
 def case_findings(cases: tuple[CaseResult, ...]) -> Iterator[VetFinding]:

@@ -13,7 +13,8 @@ from weldbasis.cli.console import json_option
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder
 from weldbasis.problem import Refused
-from weldbasis.vet import VetFinding, VetReport, from_problem, vet
+from weldbasis.releases import releases_of, version_problems
+from weldbasis.vet import VetFinding, VetReport, from_problem, vet, with_problems
 from weldbasis.words import places
 
 
@@ -25,13 +26,16 @@ def command(kb: Path | None, quiet: bool, as_json: bool) -> None:
     """Look over the rule set in the folder KB (without it: the published practice).
 
     Checks the files against their schemas, that names and units fit the vocabulary, that the rules close no
-    circle, that tables leave no gap, that stated directions hold, and that every case comes out as its
-    source says. Each finding names file, line and column, and what to do.
+    circle, that tables leave no gap, that stated directions hold, that every case comes out as its source
+    says, that amendments of a house layer do what they say, and that no rule changed its meaning since the
+    last release without a new version. Each finding names file, line and column, and what to do.
 
     Exit code 1 when something must be mended before the rules are used.
     """
     try:
-        report = vet(load_knowledge(kb or kb_folder()))
+        folder = kb or kb_folder()
+        knowledge = load_knowledge(folder)
+        report = with_problems(vet(knowledge), version_problems(knowledge, releases_of(folder)), "versions")
     except Refused as refused:
         report = VetReport(tuple(from_problem(problem) for problem in refused.problems), (), {})
     if as_json:

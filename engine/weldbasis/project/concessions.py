@@ -23,7 +23,7 @@ def with_concessions(reading: Reading, rows: Sequence[JointRow]) -> tuple[list[J
     for number, data in enumerate(reading.document.data.get("concessions", ())):
         written = reading.written("concessions", number, data=data)
         concession = _concession(reading, written, names)
-        fact = _fact(reading, written, concession) if concession.quantity else None
+        fact = _fact(reading, written, concession) if concession.quantity and "value" in data else None
         for name in concession.joints:
             if fact and concession.quantity in facts.setdefault(name, {}):
                 what = f"{concession.quantity} of joint {name} is conceded twice"
@@ -44,6 +44,12 @@ def _concession(reading: Reading, written: Written, names: Sequence[str]) -> Con
     if not _is_day(said["until"]):
         do = "write year-month-day, for example 2027-06-30"
         reading.fault(written.place_of("until"), f"{said['until']!r} is no day of the calendar", do=do)
+    if ("value" in said) != ("quantity" in said):
+        named = said.get("quantity", said.get("finding"))
+        what = (
+            f"the concession on {named} has {'no value' if 'quantity' in said else 'a value, and sets a finding aside'}"
+        )
+        reading.fault(written.place_of(), what, do="add value: …" if "quantity" in said else "take the value out")
     rules = reading.knowledge.rules
     limits = [name for name, rule in rules.items() if rule.kind == "limit"]
     if "finding" in said and said["finding"] not in limits:
