@@ -172,7 +172,8 @@ def _nothing_given(rule: Compiled, view: View, row: int, reasons: tuple[str, ...
     if rule.valid and not bool(judge_once(rule, view, "valid").may[row]):
         return "withheld", f"{title} is withheld: {'; '.join(failures(rule.valid, view, row))}."
     if bool(gate(rule, view).may[row]) and not reasons:
-        return "withheld", f"{title} gives no value here: nothing in it covers this case."
+        allowed = "what it works out is nothing that may stand for it" if rule.rule.kind == "formula" else ""
+        return "withheld", f"{title} gives no value here: {allowed or 'nothing in it covers this case'}."
     return "input-missing", f"{title} gives no value: {'; '.join(reasons) or 'nothing in it covers this case'}."
 
 

@@ -79,12 +79,14 @@ def evaluate_formula(compiled: Compiled, view: View) -> Mapping[str, Column]:
         low, high, defined = hull.low, hull.high, hull.defined
         flags = np.where(hull.exact, flags, flags | WIDE).astype(np.uint8)
     low, high = to_vocabulary(compiled, low, high)
-    some = ~np.isnan(low)
-    there = Truth(there.may & some, there.surely & defined & some)
-    if not points:
-        # A hull without an end says nothing; the value is then anything the vocabulary allows.
-        widest = compiled.gives[0].range
-        low, high = np.where(np.isneginf(low), widest.low, low), np.where(np.isposinf(high), widest.high, high)
+    allowed = compiled.gives[0].range
+    some = (low <= allowed.high) & (high >= allowed.low)
+    whole = (high <= allowed.high) & (low >= allowed.low)
+    there = Truth(there.may & some, there.surely & defined & whole)
+    # What the vocabulary does not allow is no result: the rule has nothing to say there.
+    if not bool(whole.all()):
+        low = np.maximum(low, allowed.low)
+        high = low if points else np.minimum(high, allowed.high)
     return {compiled.gives[0].id: numbers_where(there, low, high, flags)}
 
 
