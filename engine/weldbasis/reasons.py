@@ -16,6 +16,7 @@ from weldbasis.reading import value_of
 from weldbasis.settle import ANALYSIS, Narrowing, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
+from weldbasis.uncovered import nearest_text
 from weldbasis.values import Truth, may_be_at, surely_at
 from weldbasis.words import levels_text, range_text, with_unit
 
@@ -326,10 +327,11 @@ def _undecided(
     state = state_of(value, quantity)
     rule = evaluation.graph.giving.get(quantity.id, "")
     if state == "uncovered":
+        near = nearest_text(Steps(evaluation, row), Ref(quantity.id), evaluation.knowledge)
         yield Finding(
             "hold" if quantity.given == "must" else "caution",
             rule,
-            f"{quantity.title}: the rules do not cover this case.",
+            f"{quantity.title}: the rules do not cover this case. {near}".rstrip(),
         )
     if state == "open":
         text = f"{quantity.title} is open: {value_text(quantity, value)}"

@@ -19,6 +19,7 @@ from weldbasis.formula.search import Box, at_point, box_jet, least_over, ways
 from weldbasis.values import Bools, Floats, Ints
 
 _CHUNK, _SEARCHED = 20_000, 1_000  # rows worked at once, to bound memory
+_MIXER = np.uint64(0x9E3779B97F4A7C15)  # 2⁶⁴ over the golden ratio, odd: it spreads neighbours
 
 
 @dataclass(frozen=True)
@@ -52,9 +53,9 @@ def range_over(formula: Formula, lows: Mapping[str, Floats], highs: Mapping[str,
             part = at[start : start + _CHUNK]
             boxes = np.vstack([_stacked(names, lows, part), _stacked(names, highs, part)])
             # Joints of one steel share their boxes; each different box is worked once.
-            different, back = np.unique(boxes, axis=1, return_inverse=True)
+            different, back = _different(boxes)
             found = _hull(formula, different[: len(names)], different[len(names) :])
-            low[part], high[part], exact[part], defined[part] = (values[back.reshape(-1)] for values in found)
+            low[part], high[part], exact[part], defined[part] = (values[back] for values in found)
     return Ranges(low, high, exact, defined)
 
 
@@ -68,6 +69,22 @@ def slopes(
     found = jet_of(formula, lows, highs, rows).slopes
     nothing = np.zeros(rows)
     return {name: found.get(name, (nothing, nothing)) for name in formula.names}
+
+
+def _different(boxes: Floats) -> tuple[Floats, Ints]:
+    """The columns that differ, and for every column the place of its like among them.
+
+    Columns are sorted by a number made of their bits; should two different ones ever share it, all are compared.
+    """
+    bits = np.ascontiguousarray(boxes + 0.0).view(np.uint64)
+    mixed = np.zeros(boxes.shape[1], np.uint64)
+    for row in bits:
+        mixed = (mixed ^ (row + (row >> np.uint64(29)))) * _MIXER
+    _, first, back = np.unique(mixed, return_index=True, return_inverse=True)
+    different = boxes[:, first]
+    if not np.array_equal(different[:, back], boxes, equal_nan=True):
+        different, back = np.unique(boxes, axis=1, return_inverse=True)
+    return different, back.reshape(-1)
 
 
 def _wide_and_missing(

@@ -28,6 +28,8 @@ from weldbasis.values import (
     numbers_where,
 )
 
+NOT_GATHERED = "not among those gathered"
+
 
 @dataclass(frozen=True)
 class Gather:
@@ -158,7 +160,7 @@ def explain_gather(compiled: Compiled, view: View, row: int) -> Explanation:
     for at in range(first, last):
         value = value_of(column, body.of, at)
         counts = bool(likely.may[at]) and value.presence != "absent"
-        remark = "" if counts else ("gives no value" if bool(likely.may[at]) else "not among those gathered")
+        remark = "" if counts else ("gives no value" if bool(likely.may[at]) else NOT_GATHERED)
         governs, behind = _standing(body, value, result) if counts else (False, None)
         candidates.append(Candidate(Ref(body.of.id, at - first + 1), value, governs, counts, behind, remark))
     return Explanation("", tuple(candidates))

@@ -8,9 +8,9 @@ from typing import Any
 
 from weldbasis.formula import parse_formula, symbolic
 from weldbasis.graph import Node, rule_node
-from weldbasis.knowledge import Era, Grade, Quantity, Rule
+from weldbasis.knowledge import Era, Grade, Knowledge, Quantity, Rule
 from weldbasis.project import SteelEntry
-from weldbasis.site.content import Content, Decided
+from weldbasis.site.content import Content, Decided, file_names
 from weldbasis.site.pictures import neighbours
 from weldbasis.site.render import page
 from weldbasis.words import number_text, unit_text
@@ -65,6 +65,7 @@ def project_body(content: Content, decided: Decided) -> str:
         short={q.id: _SHORT.get(q.id, "") for q in columns},
         rows=rows,
         holds=holds,
+        sheets=sheet_files(content.knowledge),
         files=decided.files,
         steels=steels,
         elements=used,
@@ -247,6 +248,7 @@ def steels_body(content: Content) -> str:
         eras=eras,
         elements=used,
         era_cell=era_cell,
+        sheets=sheet_files(content.knowledge),
         count=len(content.knowledge.grades),
     )
 
@@ -267,10 +269,16 @@ def standards_of(content: Content) -> list[tuple[str, str, list[Grade]]]:
     return [(titles[source], f"{source}.html", grades) for source, grades in sorted(found.items())]
 
 
-def standard_body(title: str, grades: Sequence[Grade]) -> str:
-    """The grades of one standard."""
+def sheet_files(knowledge: Knowledge) -> dict[str, str]:
+    """The file of every steel's sheet by the id of its grade or envelope."""
+    ids = [*knowledge.grades, *knowledge.eras]
+    return dict(zip(ids, file_names([f"sheet {name}" for name in ids]).values(), strict=True))
+
+
+def standard_body(title: str, grades: Sequence[Grade], sheets: Mapping[str, str]) -> str:
+    """The grades of one standard, each with a link to its sheet."""
     used = [e for e in ELEMENTS if any(e in band.composition for grade in grades for band in grade.bands)]
-    return page("standard.html", title=title, grades=grades, elements=used)
+    return page("standard.html", title=title, grades=grades, elements=used, sheets=sheets)
 
 
 def sources_body(content: Content) -> str:

@@ -78,7 +78,7 @@ def thermal_cycle(cycle: Cycle) -> str:
         path.append((_WIDTH - _RIGHT - 10, ground))
     points = " ".join(f"{px:.1f},{y(celsius):.1f}" for px, celsius in path)
     parts.append(f'<polyline class="wb-line" points="{points}"/>')
-    return _svg("Thermal cycle of the joint, time not to scale", "".join(parts), _WIDTH, _HEIGHT)
+    return svg("Thermal cycle of the joint, time not to scale", "".join(parts), _WIDTH, _HEIGHT)
 
 
 def _axis(y: Callable[[float], float], bottom: float, top: float) -> str:
@@ -121,7 +121,8 @@ def _label(x: float, y: float, words: str) -> str:
     return f'<text class="wb-word" x="{x:.0f}" y="{y:.1f}" text-anchor="middle">{escape(words)}</text>'
 
 
-def _svg(title: str, inner: str, width: float, height: float) -> str:
+def svg(title: str, inner: str, width: float, height: float) -> str:
+    """A drawing with its title for those who listen."""
     return (
         f'<svg class="wb-picture" role="img" aria-label="{escape(title)}" viewBox="0 0 {width:g} {height:g}" '
         f'xmlns="http://www.w3.org/2000/svg"><title>{escape(title)}</title>{inner}</svg>'
@@ -160,7 +161,7 @@ def method_strip(candidates: Sequence[tuple[str, Candidate]]) -> str:
         parts.append(f'<circle class="{style}" cx="{x(high):.1f}" cy="{at:.0f}" r="4.5"/>')
         words = f"{low:.0f} to {high:.0f}" if round(low) != round(high) else f"{high:.0f}"
         parts.append(f'<text class="wb-tick" x="{x(high) + 9:.1f}" y="{at + 4:.0f}">{words}</text>')
-    return _svg("Preheat by every method that gives a value", "".join(parts), width, height)
+    return svg("Preheat by every method that gives a value", "".join(parts), width, height)
 
 
 def neighbours(title: str, above: Sequence[tuple[str, str]], below: Sequence[tuple[str, str]]) -> str:
@@ -185,7 +186,7 @@ def neighbours(title: str, above: Sequence[tuple[str, str]], below: Sequence[tup
                 f'<a href="{escape(address)}"><text class="wb-link" x="{x}" y="{at + 4:.0f}" '
                 f'text-anchor="{anchor}">{escape(_short(words, 36))}</text></a>'
             )
-    return _svg(f"What {title} reads and feeds", "".join(parts), width, height)
+    return svg(f"What {title} reads and feeds", "".join(parts), width, height)
 
 
 def _short(words: str, most: int) -> str:

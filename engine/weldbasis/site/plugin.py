@@ -24,12 +24,14 @@ from weldbasis.site.pages import (
     project_body,
     rule_body,
     rules_body,
+    sheet_files,
     sources_body,
     standard_body,
     standards_of,
     steels_body,
     vocabulary_body,
 )
+from weldbasis.site.sheet_page import sheet_body, sheets_of, title_of
 from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text
@@ -85,7 +87,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         site = Path(config.site_dir)
         frames = {depth: (site / uri).with_suffix(".html") for depth, uri in _FRAMES.items()}
         texts = {depth: path.read_text(encoding="utf-8") for depth, path in frames.items()}
-        found = [self._rule_pages(site, texts[1]), self._steel_pages(site, texts[1])]
+        found = [part(site, texts[1]) for part in (self._rule_pages, self._steel_pages, self._sheet_pages)]
         found += [self._joint_pages(site, texts[3], decided) for decided in self.content.projects]
         for path in frames.values():
             path.unlink()
@@ -133,8 +135,32 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         entries = []
         for title, file, grades in standards_of(self.content):
             words = ", ".join(grade.designation for grade in grades)
-            entries.append(_write(site, f"steels/{file}", frame, title, standard_body(title, grades), words))
+            entries.append(
+                _write(
+                    site,
+                    f"steels/{file}",
+                    frame,
+                    title,
+                    standard_body(title, grades, sheet_files(self.content.knowledge)),
+                    words,
+                )
+            )
         return entries
+
+    def _sheet_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
+        """A sheet for every grade and envelope, in the folder of the steels."""
+        knowledge = self.content.knowledge
+        sheets = sheets_of(knowledge, self.content.graph)
+        names = sheet_files(knowledge)
+        titles = {grade.id: file for _, file, grades in standards_of(self.content) for grade in grades}
+
+        def write(number: int) -> dict[str, str]:
+            steel = sheets.steels[number]
+            body = sheet_body(sheets, number, titles.get(steel.id, "index.html"))
+            title = title_of(steel)
+            return _write(site, f"steels/{names[steel.id]}", frame, title, body, f"{title}, preheat by thickness")
+
+        return each_row(write, len(sheets.steels), lambda _: None)
 
     def _joint_pages(self, site: Path, frame: str, decided: Decided) -> list[dict[str, str]]:
         digests = [joint["digest"] for joint in decided.record["joints"]]
