@@ -31,10 +31,11 @@ class CaseResult:
 
 def run_cases(knowledge: Knowledge, graph: KnowledgeGraph) -> tuple[CaseResult, ...]:
     """Run every case. A case that cannot be set up is a fault of the case, never an exception."""
-    return tuple(CaseResult(case, tuple(_faults(case, knowledge, graph))) for case in knowledge.cases)
+    return tuple(CaseResult(case, tuple(outcome_faults(case, knowledge, graph))) for case in knowledge.cases)
 
 
-def _faults(case: Case, knowledge: Knowledge, graph: KnowledgeGraph) -> list[str]:
+def outcome_faults(case: Case, knowledge: Knowledge, graph: KnowledgeGraph) -> list[str]:
+    """What is wrong with a case, or with its rule; empty where the rule gives what the case expects."""
     try:
         found = outcome_of(case, knowledge, graph)
     except (ValueError, KeyError) as fault:

@@ -10,6 +10,7 @@ import click
 
 from weldbasis.cases import nature_counts
 from weldbasis.cli.console import json_option
+from weldbasis.cli.measure import look_at_directions, look_at_figures
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder
 from weldbasis.problem import Refused
@@ -21,8 +22,18 @@ from weldbasis.words import places
 @click.command("vet")
 @click.argument("kb", type=click.Path(path_type=Path, exists=True, file_okay=False), required=False)
 @click.option("--quiet", is_flag=True, help="Only what stops work, and the summary.")
+@click.option("--figures", is_flag=True, help="Nudge every figure: does a case or a proof notice? Takes a minute.")
+@click.option(
+    "--directions", is_flag=True, help="Does more carbon, thickness, hydrogen or restraint ever ask for less?"
+)
+@click.option(
+    "--write",
+    type=click.Path(path_type=Path, dir_okay=False),
+    default=None,
+    help="Keep what --figures or --directions found in this file.",
+)
 @json_option
-def command(kb: Path | None, quiet: bool, as_json: bool) -> None:
+def command(kb: Path | None, quiet: bool, figures: bool, directions: bool, write: Path | None, as_json: bool) -> None:
     """Look over the rule set in the folder KB (without it: the published practice).
 
     Checks the files against their schemas, that names and units fit the vocabulary, that the rules close no
@@ -32,6 +43,10 @@ def command(kb: Path | None, quiet: bool, as_json: bool) -> None:
 
     Exit code 1 when something must be mended before the rules are used.
     """
+    if figures or directions:
+        knowledge = load_knowledge(kb or kb_folder())
+        (look_at_figures if figures else look_at_directions)(knowledge, write)
+        return
     try:
         folder = kb or kb_folder()
         knowledge = load_knowledge(folder)

@@ -18,6 +18,7 @@ from weldbasis.knowledge import Knowledge
 from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes
 from weldbasis.site.content import Content, Decided, Progress, joints_csv
+from weldbasis.site.guard_page import guard_body
 from weldbasis.site.joint_page import joint_body
 from weldbasis.site.pages import (
     home_body,
@@ -75,6 +76,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         ]
         pages += [
             ("rules/index.md", "Rules", rules_body(content)),
+            ("rules/guarded.md", "How well guarded", guard_body(content.knowledge)),
             ("steels/index.md", "Steels", steels_body(content)),
             ("sources/index.md", "Sources", sources_body(content)),
             ("vocabulary/index.md", "Vocabulary", vocabulary_body(content)),
@@ -104,6 +106,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         return [
             "home",
             "rules",
+            "guarded",
             "steels",
             "sources",
             "vocabulary",

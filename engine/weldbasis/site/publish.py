@@ -127,7 +127,7 @@ def _navigation(content: Content) -> list[dict[str, object]]:
     projects = [{d.project.title: f"projects/{d.project.id}/index.md"} for d in content.projects]
     return [
         {"Projects": ["index.md", *projects]},
-        {"Rules": "rules/index.md"},
+        {"Rules": ["rules/index.md", {"How well guarded": "rules/guarded.md"}]},
         {"Steels": "steels/index.md"},
         {"Sources": "sources/index.md"},
         {"Vocabulary": "vocabulary/index.md"},
