@@ -97,7 +97,7 @@ def draw() -> dict[str, Any]:
 
 
 def test_without_a_contract_the_preheat_hardly_ever_falls(knowledge: Knowledge, graph: KnowledgeGraph) -> None:
-    """A slice of the audit: falls stand only where one method hands over to another, three pairs in a thousand at most."""
+    """A slice of the audit: falls stand only where one method hands over to another, three in a thousand at most."""
     plain = draw()
     plain["levels"] = {
         name: ["no"] if name.startswith("contract_") else levels for name, levels in plain["levels"].items()

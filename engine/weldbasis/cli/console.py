@@ -8,6 +8,7 @@ from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from functools import cache
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 from rich.console import Console
@@ -18,6 +19,9 @@ from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project, read_project
 from weldbasis.project.concessions import expired
 from weldbasis.project.pinned import rules_for
+
+if TYPE_CHECKING:
+    from cryptography.hazmat.primitives.asymmetric.ed25519 import Ed25519PrivateKey
 
 CAUTION = (
     "Decisions support qualified judgement; the contract's code, the qualified procedure and the responsible "
@@ -61,6 +65,17 @@ def rules_for_all(folders: Sequence[Path], kb: Path | None) -> Knowledge:
         what = f"this project is decided with other rules than {folders[0]}"
         raise Refused([Problem(Place(str(other)), what, "a site shows one set of rules", "publish them apart")])
     return sets[0]
+
+
+def private_key(path: Path) -> Ed25519PrivateKey:
+    """The private key in a file, to sign with. Raises Refused where there is none."""
+    from weldbasis.load.signature import BadKey, read_private_key  # noqa: PLC0415  (only where something is signed)
+
+    try:
+        return read_private_key(path)
+    except BadKey as fault:
+        do = "make one with: openssl genpkey -algorithm ed25519 -out key.pem"
+        raise Refused([Problem(Place(str(path)), str(fault), do=do)]) from fault
 
 
 def joint_row(project: Project, name: str) -> int:

@@ -8,9 +8,9 @@ from pathlib import Path
 
 import click
 
+from weldbasis.cli.console import private_key
 from weldbasis.load.knowledge import knowledge_of
 from weldbasis.load.layers import read_layers
-from weldbasis.load.signature import BadKey, read_private_key
 from weldbasis.places import kb_folder
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.record import canonical_bytes, write_aside
@@ -58,7 +58,9 @@ def command(release: str, kb: Path | None, key: Path | None, date: str | None) -
             click.echo(str(problem), err=True)
         click.echo(f"{counted(len(found) + len(stops), 'finding')} to mend first; nothing was released.", err=True)
         raise click.exceptions.Exit(1)
-    data = release_data(stack, release, _day(date), releases[-1] if releases else None, _private(key))
+    data = release_data(
+        stack, release, _day(date), releases[-1] if releases else None, private_key(key) if key else None
+    )
     path = folder / "releases" / f"{release}.json"
     write_aside(path, canonical_bytes(data))
     write_aside(folder / "NEWS.md", news(knowledge.title, releases_of(folder)).encode("utf-8"))
@@ -80,13 +82,3 @@ def _day(date: str | None) -> str:
         return datetime.date.fromisoformat(date).isoformat() if date else datetime.date.today().isoformat()
     except ValueError as fault:
         raise click.BadParameter("write year-month-day, for example 2027-01-15", param_hint="--on") from fault
-
-
-def _private(path: Path | None) -> object:
-    if path is None:
-        return None
-    try:
-        return read_private_key(path)
-    except BadKey as fault:
-        do = "make one with: openssl genpkey -algorithm ed25519 -out key.pem"
-        raise Refused([Problem(Place(str(path)), str(fault), do=do)]) from fault
