@@ -19,7 +19,7 @@ from weldbasis.values import Floats
 
 _CORNERS = 10  # names whose ends are all combined; further ones are tried at random
 _TRIED = 512  # points of a box tried for a slope the wrong way
-_STEP = 1e-3  # of a range, for the pair of points that shows it
+_STEPS = (0.05, 1e-3, 0.4)  # shares of a range, for the pair of points that shows it
 _NOISE = 1e-9
 
 
@@ -137,17 +137,19 @@ def _against(
     high: Mapping[str, float],
 ) -> tuple[dict[str, float], float, float, float] | None:
     """A point, the other end of a step from it along one name, and both values, where these move the wrong way."""
-    name, step = read.name, _STEP * (high[read.name] - low[read.name])
-    start = np.minimum(points[name], high[name] - step)
-    before = value_at(compiled.body, {**points, name: start})
-    after = value_at(compiled.body, {**points, name: start + step})
-    moved = _sign(compiled, read) * (after - before)
-    moved = np.where(np.isfinite(moved), moved, 0.0)
-    worst = int(np.argmin(moved))
-    if moved[worst] >= -_NOISE * max(1.0, abs(float(before[worst]))):
-        return None
-    point = {**{other: float(values[worst]) for other, values in points.items()}, name: float(start[worst])}
-    return point, float(start[worst] + step), float(before[worst]), float(after[worst])
+    name = read.name
+    for share in _STEPS:
+        step = share * (high[name] - low[name])
+        start = low[name] + (1 - share) * (points[name] - low[name])
+        before = value_at(compiled.body, {**points, name: start})
+        after = value_at(compiled.body, {**points, name: start + step})
+        moved = _sign(compiled, read) * (after - before)
+        moved = np.where(np.isfinite(moved), moved, 0.0)
+        worst = int(np.argmin(moved))
+        if moved[worst] < -_NOISE * max(1.0, abs(float(before[worst]))):
+            point = {**{other: float(values[worst]) for other, values in points.items()}, name: float(start[worst])}
+            return point, float(start[worst] + step), float(before[worst]), float(after[worst])
+    return None
 
 
 def _direction_finding(

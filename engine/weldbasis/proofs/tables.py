@@ -62,8 +62,7 @@ def idle_rows(compiled: Compiled, domain: Cells) -> Iterator[VetFinding]:
         own = np.zeros_like(domain)
         own[np.ix_(*covers)] = True
         others = sorted(set(table.won[own & domain].tolist()) - {row, -1})
-        rows = ", ".join(str(other + 1) for other in others)
-        why = f"row{'s' if len(others) > 1 else ''} {rows} stand before it" if others else _why_outside(covers, domain)
+        why = _why_idle(covers, others)
         yield VetFinding(
             compiled.rule.place_of("rows", row),
             "caution",
@@ -73,10 +72,13 @@ def idle_rows(compiled: Compiled, domain: Cells) -> Iterator[VetFinding]:
         )
 
 
-def _why_outside(covers: tuple[Bools, ...], domain: Cells) -> str:
+def _why_idle(covers: tuple[Bools, ...], others: list[int]) -> str:
+    """Why a row decides nothing: the rows that win wherever it holds, if any, or that it holds nowhere."""
+    if others:
+        rows = ", ".join(str(other + 1) for other in others)
+        return f"rows {rows} stand before it" if len(others) > 1 else f"row {rows} stands before it"
     if not all(part.any() for part in covers):
         return "it holds for nothing"
-    del domain
     return "it lies outside the vocabulary, applies_when or valid_within"
 
 
