@@ -12,6 +12,7 @@ from pathlib import Path
 
 import pytest
 
+from house_folder import change, make_house
 from weldbasis.load import yaml_text
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder
@@ -46,6 +47,12 @@ PEENING = "rules/peening/peening-case-known.yaml"
 D11 = "rules/post-weld/pwht-range-d11.yaml"
 WEAK = "rules/carbon-equivalents/ce-iiw.yaml"
 JOINT = "quantities/joint.yaml"
+# Files of a house layer.
+YARD = "rules/preheat/min-preheat.yaml"
+LAMPS = "rules/yard/yard-lamps.yaml"
+AMENDED = "amendments.yaml"
+RESTRAINT = "quantities/joint.yaml"
+HEAD = "kb.yaml"
 # What else the proofs about these rules rest on.
 BESIDE = [
     "rules/cooling/shape-factor-thick.yaml",
@@ -212,6 +219,113 @@ PLANTED: list[tuple[str, str, str, int | str, str]] = [
 ]  # fmt: skip
 
 
+# The same for a house layer on the small set of the fixtures.
+PLANTED_IN_A_HOUSE = [
+    (YARD, '{d: "(30, 100]", restraint: [low, medium]}', '{d: "(40, 100]", restraint: [low, medium]}', 10,
+     "no row covers d is (30, 40]"),
+    (YARD, '{d: "(30, 100]", restraint: [low, medium]}', '{d: "[30, 100]", restraint: [low, medium]}', 12,
+     "rows 1 and 2 both match where d is 30"),
+    (YARD, 'valid_within: {thickness: "[1, 100]"}', 'valid_within: {thickness: "[1, 120]"}', 10,
+     "no row covers d is (100, 120]"),
+    (YARD, 'valid_within: {thickness: "[1, 100]"}', 'valid_within: {thickness: "[1, 20]"}', 12,
+     "row 2 never decides anything"),
+    (YARD, "give: 120", "give: 1200", 13, "row 3 gives min_preheat 1200, and the vocabulary allows"),
+    (YARD, "give: 120", "give: 90.5x", 13, "is no range"),
+    (YARD, "restraint: high}, give", "restraint: higher}, give", 13, "'higher' is no level of restraint"),
+    (YARD, "{result} °C here", "{heat_input} °C here", 14, "names {heat_input}, which the rule does not read"),
+    (YARD, "version: 3\n", "version: 4\n", 2, "is version 4, its last changes entry is of 3"),
+    (YARD, "source: small-handbook", "source: yard-handbook", 16, "cites 'yard-handbook', which is no source"),
+    (YARD, "{d: thickness,", "{d: {quantity: thickness, unit: kJ},", 7, "d of rule min-preheat"),
+    (LAMPS, 'thickness: "> 80"', 'thickness: "> 800"', 7, "lies outside the vocabulary's"),
+    (LAMPS, "level: note", "level: nota", 8, "'nota' is not one of the words known here"),
+    (LAMPS, "level: note\n", 'level: note\nmust_hold: "log10(thickness - 90) <= 1"\n', 9,
+     "log10(thickness − 90) is a logarithm of zero or less"),
+    (LAMPS, "level: note\n", 'level: note\nmust_hold: "thick <= 1"\n', 9, "must_hold names 'thick'"),
+    (AMENDED, "how: tighten, why: Two", "how: relax, why: Two", 2, "is relaxed without one"),
+    (AMENDED, "{rule: yard-lamps, how: add", "{rule: yard-lamp, how: add", 3,
+     "this layer holds no rule 'yard-lamp'"),
+    (AMENDED, "rule: outdoors-cold", "rule: outdoor-cold", 4, "there is no rule 'outdoor-cold' beneath to withdraw"),
+    (AMENDED, "rule: outdoors-cold, how: withdraw", "rule: thickness, how: withdraw", 4,
+     "without the rule thickness of the layer beneath nothing gives thickness, which min-preheat and 2 more read"),
+    (AMENDED, "how: tighten, why: Two", "how: harden, why: Two", 2, "'harden' is not one of the words known here"),
+    (RESTRAINT, "if_not_given: low", "if_not_given: lowest", 2, "'lowest' is no level of restraint"),
+    (RESTRAINT, "order: [low, medium, high]", "order: [low, medium]", 5, "'high' is no level of restraint"),
+    (HEAD, "stands_on: ../kb", "stands_on: ../nowhere", 5, "'../nowhere' is no set of rules"),
+]  # fmt: skip
+
+# file, text to replace, replacement, and the whole text of the finding
+TOLD = [
+    (CET, "62*HD**0.35", "62*(HD - 2)**0.35",
+     "rules/preheat/preheat-cet-member.yaml:13:1: stop: rule preheat-cet-member: (HD − 2)^0.35 is a "
+     "fractional power of less than zero inside its validity, and has no value there\n"
+     "    for example CET = 0.35, d = 50, HD = 1, Q = 2.25\n"
+     "    narrow valid_within so that it cannot be, or bound the part with max or min"),
+    (HV, "max(tB/tM, 1.01)", "tB/tM",
+     "rules/hardness/hv-max-member.yaml:10:1: stop: rule hv-max-member: 4 × log10(t / tM) / log10(tB / tM) is "
+     "a division by zero inside its validity, and has no value there\n"
+     "    for example HM = 700, HB = 200, t = 2500, tM = 909091, tB = 909091\n"
+     "    narrow valid_within so that it cannot be, or bound the part with max or min"),
+    (SCALE, '"(10, 15]"', '"(11, 15]"',
+     "rules/hydrogen/hydrogen-scale.yaml:9:1: caution: rule hydrogen-scale: no row covers hydrogen is (10, "
+     "11]\n"
+     "    for example hydrogen = 10.5\n"
+     "    add a row (give: absent where the table is silent on purpose), or narrow valid_within"),
+    (SCALE, '"(5, 10]"', '"[5, 10]"',
+     "rules/hydrogen/hydrogen-scale.yaml:13:5: stop: rule hydrogen-scale: rows 3 and 4 both match where "
+     "hydrogen is 5, and give C and D\n"
+     "    part them, or read the table as most-demanding-row"),
+    (CET, '"[10, 90]"', '"[10, 100]"',
+     "rules/preheat/preheat-cet-member.yaml:8:47: stop: rule preheat-cet-member lets in thickness [10, 100], "
+     "and en-1011-2 (Annex C, C.3) holds for [10, 90] only\n"
+     "    for example thickness = 100\n"
+     "    narrow valid_within, or say in the cite why: beyond: {thickness: …}"),
+    (CET, "hydrogen: up", "hydrogen: down",
+     "rules/preheat/preheat-cet-member.yaml:14:49: stop: rule preheat-cet-member says that the result goes "
+     "down with hydrogen, and the formula does not\n"
+     "    for example CET = 0.5, HD = 1, Q = 0.5, d = 10 gives 124.26; HD = 1.95 gives 140.585\n"
+     "    turn the direction round, narrow valid_within, or write either"),
+    (FACTOR, "give: 40", "give: 40000",
+     "rules/restraint/restraint-factor.yaml:11:33: stop: rule restraint-factor: row 2 gives restraint_factor "
+     "40000, and the vocabulary allows [0, 100]\n"
+     "    look at the unit and the decimal point, or widen the vocabulary"),
+    (D11, "the-one-row\nrows:\n",
+     "most-demanding-row\nrows:\n  - {when: {steel_family: carbon}, give: {pwht_d11_min: 590, pwht_d11_max: 610}}\n",
+     "rules/post-weld/pwht-range-d11.yaml:12:5: stop: rule pwht-range-d11: rows 1 and 2 both hold, row 2 is "
+     "taken, and row 1 asks for more pwht_d11_max\n"
+     "    for example steel_family = carbon\n"
+     "    part the rows, or give each quantity by a rule of its own"),
+    (PEENING, "  - {give: not-needed}\n",
+     "  - {give: not-needed}\n  - {when: {restraint: low, form: butt}, give: not-needed}\n",
+     "rules/peening/peening-case-known.yaml:11:5: caution: rule peening-case-known: row 2 never decides "
+     "anything: row 1 stands before it\n"
+     "    take the row out, or widen what it is for"),
+    (CAPPED, 'carbon: "less', 'copper: "less',
+     "rules/preheat/preheat-cet-capped-member.yaml:19:15: caution: rule preheat-cet-capped-member may go "
+     "beyond its source in copper, which it holds to <= 0.7 anyway\n"
+     "    take copper out of beyond"),
+    (SCALE, 'say: "{hydrogen} mL/100 g', 'say: "{heat_input} mL/100 g',
+     "rules/hydrogen/hydrogen-scale.yaml:15:1: stop: say of rule hydrogen-scale names {heat_input}, which the "
+     "rule does not read\n"
+     "    Known: hydrogen, hydrogen_scale, result."),
+    (HOLD, '"9B", "10A", "15E"]}', '"9B", "10A", "11B", "15E"]}',
+     "rules/post-weld/pwht-hold-viii.yaml:11:1: caution: rule pwht-hold-viii: no curve holds where p_number "
+     "is 11B\n"
+     "    for example member_thickness = 200, p_number = 11B\n"
+     "    add its nodes, or narrow valid_within"),
+    (YARD, 'formula: "round_up(T, step)"', 'formula: "2000 + round_up(T, step)"',
+     "rules/preheat/min-preheat.yaml:8:1: stop: rule min-preheat: the formula gives 1600 to 2825, and the "
+     "vocabulary allows min_preheat only [-20, 500] degC\n"
+     "    look at the units of reads and gives_unit, or at the vocabulary"),
+    (WINDOW, '"Tp <= Ti"', '"Tp <= Tj"',
+     "rules/interpass/interpass-below-preheat.yaml:7:1: stop: rule interpass-below-preheat: must_hold names "
+     "'Tj', which reads does not bind"),
+    (THIN, "applies_when: {member_role: parent}", 'applies_when: {member_role: parent, min_preheat: "> 460"}',
+     "rules/cooling/t85-thin.yaml:9:1: stop: rule t85-thin can hold nowhere: no values meet "
+     "applies_when and valid_within together\n"
+     "    widen one of them, or take the rule out"),
+]  # fmt: skip
+
+
 @pytest.fixture(scope="module")
 def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """A small copy of the knowledge base, in which the planted files stand at their places and lines."""
@@ -291,3 +405,31 @@ def test_planted_fault_is_caught_at_its_place(
     assert hits, "\n".join(str(finding) for finding in found[:10])
     expected = f"{file}:{line}" if isinstance(line, int) else line
     assert expected in {f"{hit.place.file}:{hit.place.line}" for hit in hits}
+
+
+@pytest.mark.parametrize(
+    ("file", "old", "new", "line", "words"), PLANTED_IN_A_HOUSE, ids=[f"{p[0]}:{p[4][:40]}" for p in PLANTED_IN_A_HOUSE]
+)
+def test_fault_planted_in_a_house_layer_is_caught_at_its_place(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, file: str, old: str, new: str, line: int, words: str
+) -> None:
+    house = make_house(tmp_path)
+    monkeypatch.chdir(tmp_path)
+    assert not any(words in finding.what for finding in findings(house))
+    change(house / file, old, new)
+    found = findings(house)
+    hits = {f"{hit.place.file}:{hit.place.line}" for hit in found if words in hit.what}
+    assert f"house/{file}:{line}" in hits, "\n".join(str(finding) for finding in found[:10])
+
+
+@pytest.mark.parametrize(("file", "old", "new", "text"), TOLD, ids=[told[3].split(": ")[2][:50] for told in TOLD])
+def test_a_finding_is_told_with_place_example_and_remedy(
+    folder: Path, file: str, old: str, new: str, text: str
+) -> None:
+    path = folder / file
+    before = path.read_text(encoding="utf-8")
+    change(path, old, new)
+    try:
+        assert text in {str(finding) for finding in findings(folder)}
+    finally:
+        path.write_text(before, encoding="utf-8")

@@ -271,7 +271,7 @@ span_pairs = st.tuples(span_ends, span_ends, st.booleans(), st.booleans()).filte
 
 @given(span_pairs, span_pairs)
 def test_common_and_within_equal_enumeration(one: Any, other: Any) -> None:
-    first, second = Range(*map(float, one[:2]), *one[2:]), Range(*map(float, other[:2]), *other[2:])
+    first, second = (Range(float(span[0]), float(span[1]), span[2], span[3]) for span in (one, other))
     points = np.arange(-4, 4.01, 0.25)
     both = [p for p in points if first.holds(p) and second.holds(p)]
     met = common(first, second)

@@ -146,7 +146,7 @@ def never_applies(compiled: Compiled, boxes: tuple[Box, ...]) -> Iterator[VetFin
             rule.place_of("valid_within") if rule.valid_within else rule.place_of("applies_when"),
             "stop",
             "vocabulary",
-            f"rule {rule.id} can hold nowhere: applies_when and valid_within contradict each other, or what it reads",
+            f"rule {rule.id} can hold nowhere: no values meet applies_when and valid_within together",
             "widen one of them, or take the rule out",
         )
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from weldbasis.graph import KnowledgeGraph, Node, quantity_node, rule_node
-from weldbasis.knowledge import Knowledge
+from weldbasis.knowledge import Knowledge, Quantity, Rule
 from weldbasis.proofs.finding import VetFinding
 
 
@@ -26,7 +26,7 @@ def unused_parts(knowledge: Knowledge, graph: KnowledgeGraph) -> Iterator[VetFin
     for quantity in knowledge.quantities.values():
         node = quantity_node(quantity.id)
         if quantity.given == "never" and quantity.id not in graph.giving:
-            yield VetFinding(
+            yield _orphaned(quantity, knowledge, graph) or VetFinding(
                 quantity.place,
                 "caution",
                 "unused",
@@ -41,6 +41,24 @@ def unused_parts(knowledge: Knowledge, graph: KnowledgeGraph) -> Iterator[VetFin
                 f"nothing reads {quantity.id}",
                 "read it in a rule, show it under compare, or take it out",
             )
+
+
+def _orphaned(quantity: Quantity, knowledge: Knowledge, graph: KnowledgeGraph) -> VetFinding | None:
+    """A quantity whose rule a layer withdrew or replaced, while others still read it."""
+    readers = [node.id for node in graph.feeds(quantity_node(quantity.id))]
+    for amendment in knowledge.amendments:
+        before = knowledge.beneath.get((amendment.of, amendment.id))
+        if isinstance(before, Rule) and quantity.id in before.gives and readers:
+            return VetFinding(
+                amendment.place,
+                "caution",
+                "unused",
+                f"without the rule {amendment.id} of the layer beneath nothing gives {quantity.id}, "
+                f"which {readers[0]}{f' and {len(readers) - 1} more' if len(readers) > 1 else ''} read"
+                f"{'' if len(readers) > 1 else 's'}",
+                "let another rule give it, or withdraw what reads it too",
+            )
+    return None
 
 
 def _shown(knowledge: Knowledge, graph: KnowledgeGraph) -> frozenset[Node]:
