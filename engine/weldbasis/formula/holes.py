@@ -12,7 +12,8 @@ from functools import reduce
 
 import numpy as np
 
-from weldbasis.formula.intervals import Jet, jet_of
+from weldbasis.formula.factors import bounds_over, factors, part_formula
+from weldbasis.formula.intervals import Jet
 from weldbasis.formula.parse import Binary, Call, Formula, Node, Number, walk
 from weldbasis.formula.points import folded, value_at
 from weldbasis.formula.search import Box, at_point, box_jet
@@ -84,7 +85,7 @@ def _needs(root: Node) -> Iterator[_Need]:
 
 
 def _power_needs(part: Binary) -> Iterator[_Need]:
-    exponent = folded(_formula(part.right))
+    exponent = folded(part_formula(part.right))
     if not isinstance(exponent, Number):
         yield _above_zero(part, part.left, "a changing power of zero or less")
     elif exponent.value != int(exponent.value):
@@ -99,7 +100,7 @@ def _zeros(node: Node) -> Iterator[Node]:
     if isinstance(node, Binary) and node.sign == "*":
         yield from _zeros(node.left)
         yield from _zeros(node.right)
-    elif isinstance(node, Binary) and node.sign == "**" and _is_positive(folded(_formula(node.right))):
+    elif isinstance(node, Binary) and node.sign == "**" and _is_positive(folded(part_formula(node.right))):
         yield from _zeros(node.left)
     elif isinstance(node, Call) and node.function == "sqrt":
         yield from _zeros(node.arguments[0])
@@ -111,14 +112,10 @@ def _is_positive(node: Node) -> bool:
     return isinstance(node, Number) and node.value > 0
 
 
-def _formula(node: Node) -> Formula:
-    return Formula(node, repr(node))  # formulas are the same where their texts are
-
-
 def _hole(need: _Need, whole: Formula, low: Mapping[str, float], high: Mapping[str, float]) -> Hole | None:
-    inner = _formula(need.of if need.zero else _what_decides(need, low, high))
+    inner = part_formula(need.of if need.zero else _what_decides(need, low, high))
     names = inner.names
-    part = symbolic(_formula(need.part))
+    part = symbolic(part_formula(need.part))
     if not names:
         value = value_at(inner, {})
         return Hole(part, need.why, between(low, high)) if bool(need.broken(np.asarray(value))) else None
@@ -136,22 +133,8 @@ def _what_decides(need: _Need, low: Mapping[str, float], high: Mapping[str, floa
 
     That a divisor is not zero is a need of its own.
     """
-    left = [node for node in _factors(need.of) if not bool(need.met(_over(node, low, high)).all())]
+    left = [node for _, node in factors(need.of) if not bool(need.met(bounds_over(node, low, high)).all())]
     return reduce(lambda one, other: Binary("*", one, other), left) if left else Number(1.0, "1")
-
-
-def _factors(node: Node) -> Iterator[Node]:
-    if isinstance(node, Binary) and node.sign in ("*", "/"):
-        yield from _factors(node.left)
-        yield from _factors(node.right)
-    else:
-        yield node
-
-
-def _over(node: Node, low: Mapping[str, float], high: Mapping[str, float]) -> Jet:
-    formula = _formula(node)
-    bottom, top = (np.array([[end[n]] for n in formula.names], np.float64) for end in (low, high))
-    return box_jet(formula, bottom.reshape(-1, 1), top.reshape(-1, 1)) if formula.names else jet_of(formula, {}, {}, 1)
 
 
 def between(low: Mapping[str, float], high: Mapping[str, float]) -> dict[str, float]:
@@ -164,7 +147,7 @@ def _shown(need: _Need, whole: Formula, beside: Mapping[str, float], point: Mapp
     everywhere = {name: float(point.get(name, beside[name])) for name in whole.names}
     value = float(np.ravel(value_at(whole, {name: np.array([at]) for name, at in everywhere.items()}))[0])
     confirmed = need.zero or not np.isfinite(value)
-    return Hole(symbolic(_formula(need.part)), need.why, everywhere if confirmed else None)
+    return Hole(symbolic(part_formula(need.part)), need.why, everywhere if confirmed else None)
 
 
 def _search(need: _Need, inner: Formula, low: Box, high: Box) -> Floats | bool | None:

@@ -5,11 +5,12 @@ way the rule says.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from itertools import product
+from itertools import combinations, product
 
 import numpy as np
 
 from weldbasis.formula import Comparison, Formula, range_over, slopes, value_at
+from weldbasis.formula.factors import what_turns
 from weldbasis.formula.holes import Hole, holes
 from weldbasis.kinds.compiled import BoundRead, Compiled
 from weldbasis.kinds.limit import Limit
@@ -21,6 +22,7 @@ _CORNERS = 10  # names whose ends are all combined; further ones are tried at ra
 _TRIED = 512  # points of a box tried for a slope the wrong way
 _STEPS = (0.05, 1e-3, 0.4)  # shares of a range, for the pair of points that shows it
 _NOISE = 1e-9
+_SLICES = 2304  # pieces of a box, along one name or along two
 
 
 def formula_findings(compiled: Compiled, boxes: tuple[Box, ...]) -> Iterator[VetFinding]:
@@ -109,6 +111,9 @@ def wrong_directions(compiled: Compiled, boxes: tuple[Box, ...]) -> Iterator[Vet
             if pair:
                 del open_still[read.name]
                 yield _direction_finding(compiled, read, *pair)
+            elif not _follows_in_slices(compiled, read, low, high):
+                del open_still[read.name]
+                yield _open_direction(compiled, read)
 
 
 def _sign(compiled: Compiled, read: BoundRead) -> float:
@@ -117,7 +122,32 @@ def _sign(compiled: Compiled, read: BoundRead) -> float:
 
 def _follows(compiled: Compiled, read: BoundRead, bounds: tuple[Floats, Floats]) -> bool:
     sign = _sign(compiled, read)
-    return bool(bounds[0][0] >= 0 if sign > 0 else bounds[1][0] <= 0)
+    return bool((bounds[0] >= 0).all() if sign > 0 else (bounds[1] <= 0).all())
+
+
+def _follows_in_slices(
+    compiled: Compiled, read: BoundRead, low: Mapping[str, float], high: Mapping[str, float]
+) -> bool:
+    """Whether bounds on the slope prove the direction over slices of the box, cut along one name or along two."""
+    formula = what_turns(compiled.body, read.name, low, high)
+    for cut in (*combinations(formula.names, 1), *combinations(formula.names, 2)):
+        each = round(_SLICES ** (1 / len(cut)))
+        edges = [_edges(low[name], high[name], each) for name in cut]
+        bottoms = np.meshgrid(*[ends[:-1] for ends in edges])
+        tops = np.meshgrid(*[ends[1:] for ends in edges])
+        rows = each ** len(cut)
+        lows = {name: np.full(rows, end) for name, end in low.items()}
+        highs = {name: np.full(rows, end) for name, end in high.items()}
+        lows |= {name: ends.ravel() for name, ends in zip(cut, bottoms, strict=True)}
+        highs |= {name: ends.ravel() for name, ends in zip(cut, tops, strict=True)}
+        if _follows(compiled, read, slopes(formula, lows, highs)[read.name]):
+            return True
+    return False
+
+
+def _edges(low: float, high: float, slices: int) -> Floats:
+    """The ends of slices of a range: of like ratio where it lies above zero, else of like width."""
+    return np.geomspace(low, high, slices + 1) if low > 0 else np.linspace(low, high, slices + 1)
 
 
 def _points(low: Mapping[str, float], high: Mapping[str, float]) -> dict[str, Floats]:
@@ -163,4 +193,15 @@ def _direction_finding(
         f"rule {rule.id} says that the result goes {stated} with {read.quantity.id}, and the formula does not",
         "turn the direction round, narrow valid_within, or write either",
         f"{point_text(point)} gives {before:.6g}; {read.name} = {onward:.6g} gives {after:.6g}",
+    )
+
+
+def _open_direction(compiled: Compiled, read: BoundRead) -> VetFinding:
+    rule, stated = compiled.rule, compiled.rule.direction[read.quantity.id]
+    return VetFinding(
+        rule.place_of("direction", read.quantity.id),
+        "caution",
+        "directions",
+        f"rule {rule.id}: it could not be proved that the result goes {stated} with {read.quantity.id}",
+        "narrow valid_within, or write either",
     )

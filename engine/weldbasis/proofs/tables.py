@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from itertools import combinations, product
+from itertools import combinations, islice, product
+from math import prod
 
 import numpy as np
 
@@ -16,6 +17,7 @@ from weldbasis.proofs.domain import Box, body_range
 from weldbasis.proofs.finding import VetFinding, point_text
 from weldbasis.ranges import Range, common, parse_range, within
 from weldbasis.values import Bools, levels_of
+from weldbasis.words import counted
 
 _SHOWN = 3
 
@@ -37,11 +39,13 @@ def table_findings(compiled: Compiled, boxes: tuple[Box, ...]) -> Iterator[VetFi
 def gaps(compiled: Compiled, domain: Cells, boxes: tuple[Box, ...]) -> Iterator[VetFinding]:
     """Cells of the domain that no row covers, told as blocks."""
     table: Table = compiled.body
-    found = list(blocks((table.won == -1) & domain))
+    bare = (table.won == -1) & domain
+    found = list(islice(blocks(bare), _SHOWN))
     if not found:
         return
-    words = [block_words(table.axes, compiled.reads, boxes, block) for block in found[:_SHOWN]]
-    more = f" and {len(found) - _SHOWN} more" if len(found) > _SHOWN else ""
+    words = [block_words(table.axes, compiled.reads, boxes, block) for block in found]
+    left = int(bare.sum()) - sum(prod(last - first + 1 for first, last in block) for block in found)
+    more = f" and {counted(left, 'cell')} more" if left else ""
     yield VetFinding(
         compiled.rule.place_of("rows"),
         "caution",
@@ -90,8 +94,11 @@ def lost_demands(compiled: Compiled, domain: Cells, boxes: tuple[Box, ...]) -> I
     if compiled.rule.body["read_as"] != "most-demanding-row":
         return
     for first, second in combinations(range(len(table.covers)), 2):
+        shares = [a & b for a, b in zip(table.covers[first], table.covers[second], strict=True)]
+        if not all(share.any() for share in shares):
+            continue
         both = np.zeros_like(domain)
-        both[np.ix_(*[a & b for a, b in zip(table.covers[first], table.covers[second], strict=True)])] = True
+        both[np.ix_(*shares)] = True
         for winner, other in ((first, second), (second, first)):
             lost = next((q for at, q in enumerate(compiled.gives) if _asks_more(table, at, q, other, winner)), None)
             shared = both & domain & (table.won == winner)
