@@ -15,6 +15,7 @@ from hypothesis import strategies as st
 from weldbasis.cli.vet import _show
 from weldbasis.evaluate import evaluate
 from weldbasis.formula import parse_formula, value_at
+from weldbasis.formula.factors import what_turns
 from weldbasis.formula.holes import holes
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.kinds import Compiled, compile_rule
@@ -319,3 +320,12 @@ def test_many_gaps_are_counted() -> None:
     found = next(f for f in table_findings(rule, domain_of(rule)) if f.check == "gaps")
     assert found.what == "rule r: no row covers t is [1, 2); t is [3, 4); t is [5, 6) and 6 cells more"
     assert found.example == "t = 1.5, g = a"
+
+
+@pytest.mark.parametrize(
+    ("text", "kept"),
+    [("y*x", {"x", "y"}), ("y*y*x", {"x", "y"}), ("y**2*x", {"x"}), ("x/exp(y)", {"x"}), ("(x - y)*2", {"x", "y"})],
+)
+def test_only_factors_that_are_never_below_zero_are_left_out(text: str, kept: set[str]) -> None:
+    low, high = {"x": -1.0, "y": -2.0}, {"x": 1.0, "y": 2.0}
+    assert set(what_turns(parse_formula(text), "x", low, high).names) == kept
