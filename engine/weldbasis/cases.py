@@ -91,7 +91,7 @@ def _cells(quantity: Quantity, values: list[Any]) -> Column:
         gone = np.array([value == "absent" for value in values])
         low = np.where(gone, np.nan, [found.low for found in ranges])
         high = np.where(gone, np.nan, [found.high for found in ranges])
-        point = np.array_equal(low, high, equal_nan=True)
+        point = all(found.low == found.high for found in ranges)
         return Numbers(low, low if point else high, np.where(gone, ABSENT, PRESENT).astype(np.uint8), flags)
     masks = []
     for value in values:

@@ -12,7 +12,9 @@ from weldbasis.graph import KnowledgeGraph
 from weldbasis.kinds import compile_rule
 from weldbasis.knowledge import Case, Knowledge, Rule
 from weldbasis.problem import Refused
-from weldbasis.vet import table_gaps, unused_rows, wrong_directions
+from weldbasis.proofs.domain import domain_of
+from weldbasis.proofs.formulas import wrong_directions
+from weldbasis.proofs.tables import table_findings
 
 FORMAT = "weldbasis-figures/1"
 
@@ -68,11 +70,9 @@ def _noticed(rule: Rule, before: frozenset[str], cases: list[Case], knowledge: K
 def _proofs(rule: Rule, knowledge: Knowledge) -> frozenset[str]:
     """What the proofs about a rule find: gaps, rows that decide nothing, stated directions that do not hold."""
     compiled = compile_rule(rule, knowledge)
-    return frozenset(
-        f"{finding.check} {finding.place}"
-        for part in (table_gaps, unused_rows, wrong_directions)
-        for finding in part(compiled)
-    )
+    boxes = domain_of(compiled)
+    directions = wrong_directions(compiled, boxes) if rule.kind == "formula" else ()
+    return frozenset(f"{found.check} {found.place}" for found in (*table_findings(compiled, boxes), *directions))
 
 
 def summary(knowledge: Knowledge, found: tuple[Guarded, ...]) -> dict[str, Any]:

@@ -73,6 +73,9 @@ class Cite:
     at: str
     checked: Checked
     covers: str = ""
+    # The limits of the source that the rule is held to, and where it may go beyond them, with the reason.
+    holds_to: str = ""
+    beyond: Mapping[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -131,6 +134,19 @@ class Rule:
 
 
 @dataclass(frozen=True)
+class Limits:
+    """Ranges, by quantity id, that a source states for one of its methods."""
+
+    id: str
+    at: str
+    checked: Checked
+    within: Mapping[str, Range]
+    note: str = ""
+    place: Place = Place("")
+    places: Mapping[str, Place] = field(default_factory=dict, compare=False, repr=False)
+
+
+@dataclass(frozen=True)
 class Source:
     """What a rule cites."""
 
@@ -141,6 +157,7 @@ class Source:
     year: int = 0
     how_checked: str = ""
     note: str = ""
+    limits: tuple[Limits, ...] = ()
     place: Place = Place("")
 
 

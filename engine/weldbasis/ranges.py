@@ -64,3 +64,17 @@ def parse_range(text: str | float | int) -> Range:
     if re.fullmatch(_NUMBER, word):
         return Range(float(word), float(word))
     raise ValueError(f"{word!r} is no range; write one like '[0.40, 0.45)', '<= 20' or '> 38'")
+
+
+def common(one: Range, other: Range) -> Range | None:
+    """The numbers that lie in both ranges; None where there are none."""
+    low, low_open = max((one.low, one.low_open), (other.low, other.low_open))
+    high, high_closed = min((one.high, not one.high_open), (other.high, not other.high_open))
+    if low > high or (low == high and (low_open or not high_closed)):
+        return None
+    return Range(low, high, low_open, not high_closed)
+
+
+def within(inner: Range, outer: Range) -> bool:
+    """Whether every number of `inner` lies in `outer`."""
+    return common(inner, outer) == inner

@@ -35,6 +35,7 @@ from weldbasis.kinds.grid import (
 from weldbasis.kinds.interpolate import Surface, compile_surface, evaluate_surface, explain_surface
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Quantity, Rule
+from weldbasis.problem import Problem, Refused
 from weldbasis.ranges import EVERYTHING, Range, parse_range
 from weldbasis.values import Bools, Column, Ints, Truth, levels_where, mask_of, numbers_where
 
@@ -171,18 +172,20 @@ def _ranks(quantity: Quantity, cells: Cells) -> list[float]:
 
 
 def _refuse_overlap(compiled: Compiled, axes: Sequence[Axis], covers: Sequence[Sequence[Bools]]) -> None:
-    found = overlaps(axes, covers)
-    if not found:
-        return
-    first, second, cell = found[0]
-    example = describe_cell(axes, cell)
-    raise refuse(
-        compiled.rule,
-        f"rows {first + 1} and {second + 1} both match where {example}",
-        "rows",
-        second,
-        do="part them, or read the table as most-demanding-row",
-    )
+    rows = compiled.rule.body["rows"]
+    problems: list[Problem] = []
+    for first, second, cell in overlaps(axes, covers):
+        one, other = (_give_words(rows[place]["give"]) for place in (first, second))
+        gives = f"give {one} and {other}" if one != other else f"both give {one}"
+        problems += refuse(
+            compiled.rule,
+            f"rows {first + 1} and {second + 1} both match where {describe_cell(axes, cell)}, and {gives}",
+            "rows",
+            second,
+            do="part them, or read the table as most-demanding-row",
+        ).problems
+    if problems:
+        raise Refused(problems)
 
 
 def describe_cell(axes: Sequence[Axis], cell: Sequence[int]) -> str:
@@ -288,8 +291,11 @@ def row_words(compiled: Compiled, place: int) -> str:
     written = compiled.rule.body["rows"][place]
     when = ", ".join(f"{name} {_words(wanted)}" for name, wanted in written.get("when", {}).items())
     give = written["give"]
-    given = ", ".join(f"{n} {_words(v)}" for n, v in give.items()) if isinstance(give, Mapping) else _words(give)
-    return f"row {place + 1}: {when or 'all else'} → {given}"
+    return f"row {place + 1}: {when or 'all else'} → {_give_words(give)}"
+
+
+def _give_words(give: Any) -> str:
+    return ", ".join(f"{n} {_words(v)}" for n, v in give.items()) if isinstance(give, Mapping) else _words(give)
 
 
 def _words(written: Any) -> str:

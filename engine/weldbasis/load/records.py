@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from typing import Any
 
 from weldbasis.knowledge import (
@@ -16,6 +16,7 @@ from weldbasis.knowledge import (
     Grade,
     GradeBand,
     Level,
+    Limits,
     Quantity,
     Read,
     Rule,
@@ -97,7 +98,10 @@ def quantity_from(data: Mapping[str, Any], document: Document, path: Path_, topi
 
 def cites_from(data: Mapping[str, Any], default: tuple[Cite, ...] = ()) -> tuple[Cite, ...]:
     """The sources a record cites, or those of its file."""
-    found = tuple(Cite(c["source"], c["at"], c["checked"], c.get("covers", "")) for c in data.get("cites", ()))
+    found = tuple(
+        Cite(c["source"], c["at"], c["checked"], c.get("covers", ""), c.get("holds_to", ""), c.get("beyond", {}))
+        for c in data.get("cites", ())
+    )
     return found or default
 
 
@@ -161,12 +165,28 @@ def source_from(data: Mapping[str, Any], document: Document, path: Path_) -> Sou
         data.get("year", 0),
         data["how_checked"],
         data.get("note", ""),
+        tuple(limits_from(data.get("limits", ()), document, path)),
         document.place(*path, "id"),
     )
 
 
+def limits_from(written: Iterable[Mapping[str, Any]], document: Document, path: Path_) -> Iterator[Limits]:
+    """The limits that a source states."""
+    for place, data in enumerate(written):
+        here = (*path, "limits", place, "within")
+        yield Limits(
+            data["id"],
+            data["at"],
+            data["checked"],
+            ranges_from(data["within"], here),
+            data.get("note", ""),
+            document.place(*path, "limits", place, "id"),
+            {name: document.place(*here, name) for name in data["within"]},
+        )
+
+
 def ranges_from(data: Mapping[str, Any], path: Path_) -> dict[str, Range]:
-    """Ranges by element symbol."""
+    """Ranges by name: an element symbol, or a quantity id."""
     return {name: range_at(value, (*path, name)) for name, value in data.items()}
 
 
