@@ -8,6 +8,9 @@ from weldbasis.knowledge import Quantity
 from weldbasis.trace import DecisionState, Value
 from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Numbers
 
+# Above every temperature, time and level: a decision that may not be covered, and one that is not, ask most.
+MAY_BE_UNCOVERED, UNCOVERED = 1e12, np.inf
+
 
 def state_of(value: Value, quantity: Quantity) -> DecisionState:
     """Settled when every value left asks the shop for the same thing; uncovered when no rule gives any."""
@@ -58,3 +61,22 @@ def demand(column: Column, quantity: Quantity) -> Floats | None:
         last = len(quantity.order) - 1 - np.argmax(bits[:, ::-1], axis=1)
         worth = (last if quantity.worse == "last" else -np.argmax(bits, axis=1)).astype(np.float64)
     return np.where(column.presence == ABSENT, -np.inf, worth)
+
+
+def demand_of(column: Column, quantity: Quantity) -> Floats:
+    """How much each row asks of the shop at its demanding end, as a number that rises with it.
+
+    A number counts to the quantity's decimals. A decision that may be uncovered asks more than any that is
+    covered, and one that surely is uncovered most.
+    """
+    if isinstance(column, Numbers):
+        end = column.high if quantity.worse == "higher" else -column.low
+        asked = np.round(np.nan_to_num(end), quantity.decimals)
+    else:
+        mask = column.mask.astype(np.float64)
+        lowest = (column.mask & (~column.mask + np.uint64(1))).astype(np.float64)
+        asked = np.frexp(mask if quantity.worse == "last" else lowest)[1].astype(np.float64)
+        asked = asked if quantity.worse == "last" else -asked
+    asked = np.where(column.presence == PRESENT, asked, MAY_BE_UNCOVERED)
+    result: Floats = np.where(column.presence == ABSENT, UNCOVERED, asked)
+    return result
