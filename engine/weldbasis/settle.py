@@ -83,10 +83,8 @@ def open_decisions(evaluation: Evaluation, rows: Sequence[int]) -> dict[int, lis
 
 def questions_of(evaluation: Evaluation, row: int, decisions: Sequence[Quantity]) -> list[Question]:
     """All that could be found out of one joint, each answered by both ends of its set, or by each of its levels."""
-    relevant = sorted({name for decision in decisions for name in evaluation.graph.given_inputs(decision.id)})
     given, quantities = evaluation.facts.given, evaluation.knowledge.quantities
-    names = [name for name in relevant if name in given]
-    names += [name for name in sorted(given) if name not in relevant and name in evaluation.graph.giving]
+    names = _bearing_on(evaluation, decisions)
     found = []
     for name in names:
         places = [((row,), 0)] if quantities[name].of == "joint" else steels_of(evaluation, row)
@@ -94,13 +92,35 @@ def questions_of(evaluation: Evaluation, row: int, decisions: Sequence[Quantity]
             answers: tuple[tuple[Pin, ...], ...] = tuple((pin,) for pin in _ends(given[name], quantities[name], rows))
             if answers:
                 found.append(Question(row, (Ref(name, member),), answers))
-    elements = [name for name in names if quantities[name].topic == "composition"]
-    for rows, member in steels_of(evaluation, row):
-        open_elements = [ends for name in elements if (ends := _ends(given[name], quantities[name], rows))]
-        if len(open_elements) >= _FEWEST_ELEMENTS:
-            answers = tuple(tuple(ends[side] for ends in open_elements) for side in (0, 1))
-            found.append(Question(row, (Ref(ANALYSIS, member),), answers))
+    for _, member, ends in open_analyses(evaluation, row, decisions):
+        if len(ends) >= _FEWEST_ELEMENTS:
+            found.append(Question(row, (Ref(ANALYSIS, member),), tuple(zip(*ends, strict=True))))
     return found
+
+
+def open_analyses(
+    evaluation: Evaluation, row: int, decisions: Sequence[Quantity]
+) -> list[tuple[tuple[int, ...], int, list[tuple[Pin, Pin]]]]:
+    """For every steel of a joint its member rows, the first one's number, and the ends of each element not known.
+
+    Only elements on which one of the decisions may rest.
+    """
+    names = _bearing_on(evaluation, decisions)
+    given, quantities = evaluation.facts.given, evaluation.knowledge.quantities
+    elements = [name for name in names if quantities[name].topic == "composition"]
+    found = []
+    for rows, member in steels_of(evaluation, row):
+        ends = [_ends(given[name], quantities[name], rows) for name in elements]
+        found.append((rows, member, [(some[0], some[1]) for some in ends if some]))
+    return found
+
+
+def _bearing_on(evaluation: Evaluation, decisions: Sequence[Quantity]) -> list[str]:
+    """What is given and may bear on the decisions: inputs, then what is given in place of what a rule would give."""
+    given = evaluation.facts.given
+    relevant = sorted({name for decision in decisions for name in evaluation.graph.given_inputs(decision.id)})
+    names = [name for name in relevant if name in given]
+    return names + [name for name in sorted(given) if name not in relevant and name in evaluation.graph.giving]
 
 
 def steels_of(evaluation: Evaluation, joint: int) -> list[tuple[tuple[int, ...], int]]:
