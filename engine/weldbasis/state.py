@@ -77,6 +77,6 @@ def demand_of(column: Column, quantity: Quantity) -> Floats:
         lowest = (column.mask & (~column.mask + np.uint64(1))).astype(np.float64)
         asked = np.frexp(mask if quantity.worse == "last" else lowest)[1].astype(np.float64)
         asked = asked if quantity.worse == "last" else -asked
-    asked = np.where(column.presence == PRESENT, asked, MAY_BE_UNCOVERED)
+    asked = np.where(column.presence == PRESENT, asked, MAY_BE_UNCOVERED + asked)
     result: Floats = np.where(column.presence == ABSENT, UNCOVERED, asked)
     return result
