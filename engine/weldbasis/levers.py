@@ -17,7 +17,7 @@ from weldbasis.state import UNCOVERED, demand_of
 from weldbasis.trace import Ref, Value
 from weldbasis.trials import Trial, alike, demands_of, outcomes, pin_to
 from weldbasis.values import may_be_at
-from weldbasis.walks import Asked, Walk, first_easier, not_harder, steps_between
+from weldbasis.walks import Asked, Walk, first_easier, first_other, not_harder, steps_between
 
 _OLD = frozenset({"era-envelope", "samples", "unknown"})  # where the composition of standing steel comes from
 
@@ -170,12 +170,15 @@ def _stepped(
     wanted = list(dict.fromkeys(decision.id for some in bearing for decision in some))
     asked = Asked(evaluation, walks, wanted)
     kept = not_harder(asked, walks, bearing)
-    easier = first_easier(asked, kept)
-    turns: list[tuple[int, str, int]] = []
-    for (number, name), last in kept.items():
-        at = easier.get((number, name), last + 1)
-        if at < len(walks[number].values) and asked[number, 0, 0, name] != UNCOVERED:
-            turns.append((number, name, at))
+    nearest = first_easier(asked, kept)
+    ends = [len(walk.values) - 1 for walk in walks]
+    harder = {key: last + 1 for key, last in kept.items() if key not in nearest and last < ends[key[0]]}
+    asked.ask((number, at, at) for (number, _), at in harder.items())
+    # Where only the range as a whole may ask for more, the values beyond are looked at one by one.
+    unsure = {key: at for key, at in harder.items() if asked[key[0], at, at, key[1]] == asked[key[0], 0, 0, key[1]]}
+    nearest |= {key: at for key, at in harder.items() if key not in unsure}
+    nearest |= first_other(asked, {key: (at, ends[key[0]]) for key, at in unsure.items()})
+    turns = [(*key, at) for key, at in nearest.items() if asked[key[0], 0, 0, key[1]] != UNCOVERED]
     columns = outcomes(evaluation, [walks[number].trial(at, at) for number, _, at in turns], wanted)
     changes: dict[int, list[Change]] = {}
     for row, (number, name, at) in enumerate(turns):
@@ -183,16 +186,14 @@ def _stepped(
         becomes = value_of(columns[name], quantity, row)
         start, value = walks[number].values[0], walks[number].values[at]
         share = abs(value - start) / abs(start) if start else float("inf")
-        changes.setdefault(number, []).append(Change(name, value, becomes, (number, name) in easier, share))
+        easier = asked[number, at, at, name] < asked[number, 0, 0, name]
+        changes.setdefault(number, []).append(Change(name, value, becomes, easier, share))
     first = evaluation.knowledge.decisions[0].id
     found = []
     for place, (hold, start) in enumerate(zip(holds, starts, strict=True)):
         both = [*changes.get(2 * place, ()), *changes.get(2 * place + 1, ())]
-        ends = []
-        for number in (2 * place, 2 * place + 1):
-            last = min(kept.get((number, first), 0), easier.get((number, first), len(walks[number].values)) - 1)
-            ends.append(walks[number].values[last])
-        found.append(Margin(hold, tuple(both), start, ends[1], ends[0]))
+        up, down = (walks[n].values[nearest.get((n, first), ends[n] + 1) - 1] for n in (2 * place, 2 * place + 1))
+        found.append(Margin(hold, tuple(both), start, down, up))
     return found
 
 

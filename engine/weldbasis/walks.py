@@ -111,22 +111,38 @@ def first_easier(asked: Asked, searches: Mapping[Search, int]) -> dict[Search, i
 
     Looked for at places farther and farther from the start, then by halving; a search that finds none is left out.
     """
-    tried = {key: _farther_and_farther(last) for key, last in searches.items()}
-    asked.ask((number, at, at) for (number, _), places in tried.items() for at in places)
 
     def as_before(key: Search, at: int) -> bool:
         return asked[key[0], at, at, key[1]] >= asked[key[0], 0, 0, key[1]]
 
+    return _first_that_fails(asked, {key: (0, last) for key, last in searches.items()}, as_before)
+
+
+def first_other(asked: Asked, searches: Mapping[Search, tuple[int, int]]) -> dict[Search, int]:
+    """For each search, from one place to another, the first place at which anything else is asked than at the start.
+
+    For where a whole range may ask for more though no value in it does: its values are looked at one by one.
+    """
+
+    def as_before(key: Search, at: int) -> bool:
+        return asked[key[0], at, at, key[1]] == asked[key[0], 0, 0, key[1]]
+
+    return _first_that_fails(asked, searches, as_before)
+
+
+def _first_that_fails(asked: Asked, searches: Mapping[Search, tuple[int, int]], holds: Holds) -> dict[Search, int]:
+    tried = {key: _farther_and_farther(*span) for key, span in searches.items()}
+    asked.ask((number, at, at) for (number, _), places in tried.items() for at in places)
     between: dict[Search, tuple[int, int]] = {}
     for key, places in tried.items():
-        for kept, at in zip((0, *places), places, strict=False):
-            if not as_before(key, at):
+        for kept, at in zip((searches[key][0], *places), places, strict=False):
+            if not holds(key, at):
                 between[key] = (kept, at)
                 break
-    found = halve(asked, between, as_before, lambda at: (at, at))
+    found = halve(asked, between, holds, lambda at: (at, at))
     return {key: at + 1 for key, at in found.items()}
 
 
-def _farther_and_farther(last: int) -> tuple[int, ...]:
-    places = [4**power for power in range(1, 8) if 4**power < last]
-    return (*places, last) if last > 0 else ()
+def _farther_and_farther(first: int, last: int) -> tuple[int, ...]:
+    places = [first + 4**power for power in range(1, 8) if first + 4**power < last]
+    return (*places, last) if last > first else ()
