@@ -235,8 +235,9 @@ def _picked(evaluation: Evaluation, holds: Sequence[Hold], decisions: Mapping[st
             for side in (1, -1):
                 near = [(abs(d), n) for n, (name, _) in enumerate(some) if (d := distance(hold, name)) * side > 0]
                 for far, n in sorted(near):
-                    if asked[at + 1 + n] != here:
-                        becomes = value_of(columns[decision.id], decision, at + 1 + n)
+                    becomes = value_of(columns[decision.id], decision, at + 1 + n)
+                    # A class that is chosen asks for itself; that is no news.
+                    if asked[at + 1 + n] != here and becomes.any_of != (some[n][0],):
                         changes.append(Change(decision.id, some[n][0], becomes, bool(asked[at + 1 + n] < here), far))
                         break
         found.append(Margin(hold, tuple(changes)))

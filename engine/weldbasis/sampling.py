@@ -46,7 +46,7 @@ class Step:
 class Plan:
     """Steps in the order of joints settled for each sample taken.
 
-    First those that surely settle, then those that most probably do. `members` holds, for a steel, its member rows
+    `members` holds, for a steel, its member rows
     in each joint that is open; `left` the open decisions that no analysis settles, surely or mostly.
     """
 
@@ -56,7 +56,9 @@ class Plan:
 
 
 def plan_samples(evaluation: Evaluation, rows: Sequence[int]) -> Plan:
-    """Choose samples step by step: each time those that settle the most joints for each sample taken.
+    """Choose samples step by step, each time those that settle the most joints for each sample taken.
+
+    First those that surely settle are chosen, then of what is left those that most probably do.
 
     A joint is settled when all its open decisions are, whatever the analysis finds inside the ranges: tried at
     analyses that rise together and at some of no pattern, with every other input left as it is.
@@ -81,7 +83,7 @@ def plan_samples(evaluation: Evaluation, rows: Sequence[int]) -> Plan:
     every = [(row, decision.id) for row, some in undecided.items() for decision in some]
     steps = list(_greedy(sure, every, ()))
     steps += [dataclasses.replace(step, surely=False) for step in _greedy(likely, every, steps)]
-    return Plan(tuple(steps), members, tuple(key for key in every if key not in likely))
+    return Plan(tuple(_most_first(steps, likely, every)), members, tuple(key for key in every if key not in likely))
 
 
 def _steels(evaluation: Evaluation, joints: Sequence[int] | Mapping[int, object]) -> dict[int, list[Steel]]:
@@ -137,6 +139,19 @@ def _analyses(steels: Sequence[Sequence[tuple[Pin, Pin]]], rng: np.random.Genera
 def _at(low: Pin, high: Pin, share: float) -> Pin:
     value = low.low + share * (high.low - low.low)
     return Pin(low.quantity, low.rows, value, value)
+
+
+def _most_first(steps: Sequence[Step], cures: Cures, every: Sequence[Open]) -> list[Step]:
+    """The steps by joints settled for each sample; one that rests on samples before it stays behind them."""
+    found: list[Step] = []
+    for step in steps:
+        mine = frozenset(step.steels)
+        alone = all(any(cure <= mine for cure in cures[key]) for key in step.decisions)
+        alone = alone and all(key in step.decisions for key in every if key[0] in step.joints)
+        worth = len(step.joints) / len(step.steels)
+        better = [n for n, other in enumerate(found) if len(other.joints) / len(other.steels) >= worth]
+        found.insert(better[-1] + 1 if alone and better else 0 if alone else len(found), step)
+    return found
 
 
 def _greedy(cures: Cures, every: Sequence[Open], before: Sequence[Step]) -> Iterator[Step]:
