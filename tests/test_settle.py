@@ -21,7 +21,7 @@ from weldbasis.sampling import Plan, plan_samples
 from weldbasis.settle import open_analyses, open_decisions, settle, steels_of
 from weldbasis.state import demand_of, open_rows
 from weldbasis.trace import Ref
-from weldbasis.trials import Pin, Trial, alike, decided_again, demands_of, member_rows, outcomes
+from weldbasis.trials import Pin, Trial, alike, decided_again, demands_of, member_rows, outcomes, pin_to
 from weldbasis.walks import steps_between
 
 
@@ -187,7 +187,36 @@ def test_the_first_sample_is_the_best_by_brute_force(evaluations: tuple[Evaluati
                     if open_rows(column, decision)[n] or not np.isfinite(demand_of(column, decision)[n]):
                         left.add(trial.joint)
             counts[steel] = len(joints.keys() - left)
-        assert len(plan.steps[0].joints) / len(plan.steps[0].steels) >= max(counts.values())
+        sure = [step for step in plan.steps if step.surely]
+        assert len(sure[0].joints) / len(sure[0].steels) >= max(counts.values())
+        worth = [len(step.joints) / len(step.steels) for step in plan.steps]
+        assert worth[0] == max(worth)
+
+
+@settings(max_examples=6)
+@given(seed=st.integers(0, 10**6))
+def test_what_nothing_pinned_touches_is_rightly_taken_over(evaluations: tuple[Evaluation, ...], seed: int) -> None:
+    """Trials of wanted decisions give what a whole evaluation of the same trials gives, in the order asked."""
+    evaluation = evaluations[seed % len(evaluations)]
+    rng = np.random.default_rng(seed)
+    quantities = evaluation.knowledge.quantities
+    trials = []
+    for _ in range(600):
+        joint = int(rng.integers(len(evaluation.facts.joints)))
+        first = (member_rows(evaluation, joint)[0],)
+        pins = (
+            Pin("heat_input", (joint,), 1.0, round(float(rng.uniform(1, 3)), 2)),
+            pin_to(quantities["member_thickness"], first, float(rng.integers(8, 60))),
+            pin_to(quantities["restraint"], (joint,), "high"),
+        )
+        trials.append(Trial(joint, (pins[int(rng.integers(3))],)))
+    names = [decision.id for decision in evaluation.knowledge.decisions]
+    found = outcomes(evaluation, trials, names)
+    whole = decided_again(evaluation, trials)
+    for name in names:
+        quantity = quantities[name]
+        for row in range(0, 600, 7):
+            assert value_of(found[name], quantity, row) == value_of(whole.columns[name], quantity, row)
 
 
 def test_joints_given_the_very_same_are_tried_once(evaluations: tuple[Evaluation, ...]) -> None:

@@ -145,7 +145,9 @@ def _bears_on(evaluation: Evaluation, quantity: Quantity) -> list[Quantity]:
 
 def _margins(evaluation: Evaluation, holds: Mapping[int, Sequence[Hold]]) -> dict[int, list[Margin]]:
     every = [hold for some in holds.values() for hold in some]
-    decisions = {hold.quantity.id: _bears_on(evaluation, hold.quantity) for hold in every}
+    decisions = {
+        name: _bears_on(evaluation, quantity) for name, quantity in {h.quantity.id: h.quantity for h in every}.items()
+    }
     stepped = [hold for hold in every if hold.quantity.lever and hold.quantity.lever.step]
     others = [hold for hold in every if not (hold.quantity.lever and hold.quantity.lever.step)]
     found = {id(margin.hold): margin for margin in _stepped(evaluation, stepped, decisions)}

@@ -82,8 +82,11 @@ def plan_samples(evaluation: Evaluation, rows: Sequence[int]) -> Plan:
             members.setdefault(steel, {})[joint] = rows_of
     every = [(row, decision.id) for row, some in undecided.items() for decision in some]
     steps = list(_greedy(sure, every, ()))
-    steps += [dataclasses.replace(step, surely=False) for step in _greedy(likely, every, steps)]
-    return Plan(tuple(_most_first(steps, likely, every)), members, tuple(key for key in every if key not in likely))
+    steps += _greedy(likely, every, steps)
+    # Those chosen, once more in the order of what each brings, whether surely or most probably.
+    ordered = _greedy(likely | sure, every, (), [frozenset(step.steels) for step in steps])
+    steps = [dataclasses.replace(step, surely=all(key in sure for key in step.decisions)) for step in ordered]
+    return Plan(tuple(steps), members, tuple(key for key in every if key not in likely))
 
 
 def _steels(evaluation: Evaluation, joints: Sequence[int] | Mapping[int, object]) -> dict[int, list[Steel]]:
@@ -141,33 +144,19 @@ def _at(low: Pin, high: Pin, share: float) -> Pin:
     return Pin(low.quantity, low.rows, value, value)
 
 
-def _most_first(steps: Sequence[Step], cures: Cures, every: Sequence[Open]) -> list[Step]:
-    """The steps by joints settled for each sample; one that rests on samples before it stays behind them."""
-    found: list[Step] = []
-    for step in steps:
-        mine = frozenset(step.steels)
-        alone = all(any(cure <= mine for cure in cures[key]) for key in step.decisions)
-        alone = alone and all(key in step.decisions for key in every if key[0] in step.joints)
-        worth = len(step.joints) / len(step.steels)
-        better = [n for n, other in enumerate(found) if len(other.joints) / len(other.steels) >= worth]
-        found.insert(better[-1] + 1 if alone and better else 0 if alone else len(found), step)
-    return found
+def _greedy(
+    cures: Cures, every: Sequence[Open], before: Sequence[Step], only: Sequence[frozenset[Steel]] = ()
+) -> Iterator[Step]:
+    """Best first by joints settled for each sample, then by decisions settled, then by name; going on from `before`.
 
-
-def _greedy(cures: Cures, every: Sequence[Open], before: Sequence[Step]) -> Iterator[Step]:
-    """Best first by joints settled for each sample, then by decisions settled, then by name; going on from `before`."""
+    `only` names the samples to choose from, else all that settle something and all that settle a whole joint.
+    """
     known = frozenset(steel for step in before for steel in step.steels)
     done = {key for step in before for key in step.decisions}
     names: dict[int, set[Open]] = {}
     for key in every:
         names.setdefault(key[0], set()).add(key)
-    # What would settle a whole joint at once is a candidate too, where its decisions need different steels.
-    options = {some for cured in cures.values() for some in cured}
-    options |= {
-        frozenset().union(*(min(cures[key], key=len) for key in keys))
-        for keys in names.values()
-        if all(key in cures for key in keys)
-    }
+    options = set(only) or _options(cures, names)
     while True:
         best: tuple[tuple[float, float, int, list[Steel]], frozenset[Steel], set[Open], set[int]] | None = None
         for option in options:
@@ -187,3 +176,12 @@ def _greedy(cures: Cures, every: Sequence[Open], before: Sequence[Step]) -> Iter
         _, new, settled, whole = best
         known, done = known | new, done | settled
         yield Step(tuple(sorted(new)), tuple(sorted(whole)), tuple(sorted(settled)))
+
+
+def _options(cures: Cures, names: Mapping[int, set[Open]]) -> set[frozenset[Steel]]:
+    """Samples that settle a decision, and those that together settle all of a joint, which may need other steels."""
+    found = {some for cured in cures.values() for some in cured}
+    for keys in names.values():
+        if all(key in cures for key in keys):
+            found.add(frozenset(steel for key in keys for steel in min(cures[key], key=lambda c: (len(c), sorted(c)))))
+    return found

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from typing import get_args
 
@@ -11,6 +11,7 @@ import numpy as np
 
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts, OriginKind
+from weldbasis.graph import quantity_node
 from weldbasis.knowledge import Quantity
 from weldbasis.state import demand_of
 from weldbasis.values import (
@@ -25,6 +26,7 @@ from weldbasis.values import (
 )
 
 _KINDS = get_args(OriginKind)
+_WORTH_A_BATCH = 256
 _AT_ONCE = 4096  # trials evaluated together: enough to be fast, few enough to be light
 
 
@@ -67,15 +69,54 @@ def member_rows(evaluation: Evaluation, joint: int) -> range:
 def outcomes(evaluation: Evaluation, trials: Sequence[Trial], wanted: Sequence[str]) -> Mapping[str, Column]:
     """The columns of the wanted quantities of joints, one row a trial."""
     parts: list[Mapping[str, Column]] = []
-    for first in range(0, len(trials), _AT_ONCE):
-        outcome = decided_again(evaluation, trials[first : first + _AT_ONCE], wanted)
+    order: list[int] = []
+    for numbers in _batches(trials):
+        outcome = decided_again(evaluation, [trials[number] for number in numbers], wanted)
         parts.append({name: outcome.columns[name] for name in wanted})
-    return {name: _joined([part[name] for part in parts]) for name in wanted} if parts else {}
+        order += numbers
+    if not parts:
+        return {}
+    back = np.argsort(np.array(order, np.intp))
+    return {name: _joined([part[name] for part in parts]).take(back) for name in wanted}
+
+
+def _batches(trials: Sequence[Trial]) -> Iterator[list[int]]:
+    """Trials by number, those that pin the same quantities together, for they leave the same rules untouched."""
+    groups: dict[frozenset[str], list[int]] = {}
+    for number, trial in enumerate(trials):
+        groups.setdefault(frozenset(pin.quantity for pin in trial.pins), []).append(number)
+    few: list[int] = []
+    for numbers in groups.values():
+        if len(numbers) < _WORTH_A_BATCH:
+            few += numbers
+            continue
+        yield from (numbers[first : first + _AT_ONCE] for first in range(0, len(numbers), _AT_ONCE))
+    yield from (few[first : first + _AT_ONCE] for first in range(0, len(few), _AT_ONCE))
 
 
 def decided_again(evaluation: Evaluation, trials: Sequence[Trial], wanted: Sequence[str] | None = None) -> Evaluation:
-    """The evaluation of the trials, one joint each, of all quantities or of the wanted ones."""
-    return evaluate(evaluation.knowledge, _repeated(evaluation, trials), evaluation.graph, wanted)
+    """The evaluation of the trials, one joint each, of all quantities or of the wanted ones.
+
+    For wanted quantities, what does not rest on anything pinned is taken from the evaluation instead.
+    """
+    facts, rows = _repeated(evaluation, trials)
+    known: dict[str, Column] = {}
+    if wanted is not None and evaluation.whole:
+        quantities = evaluation.knowledge.quantities
+        known = {
+            name: evaluation.columns[name].take(rows[quantities[name].of])
+            for name in _untouched(evaluation, frozenset(pin.quantity for t in trials for pin in t.pins), wanted)
+        }
+    return evaluate(evaluation.knowledge, facts, evaluation.graph, wanted, known)
+
+
+def _untouched(evaluation: Evaluation, pinned: frozenset[str], wanted: Sequence[str]) -> list[str]:
+    """Quantities given by rules that rest on nothing pinned, and that the touched rules or the wish read."""
+    graph = evaluation.graph
+    below = {node.id for name in pinned for node in graph.bears_on(quantity_node(name)) if node.sort == "rule"}
+    read = {name for rule in graph.rules_for(tuple(wanted)) & below for name in graph.rules[rule].inputs}
+    spared = [name for name in sorted({*read, *wanted}) if graph.giving.get(name, "") not in below | {""}]
+    return [name for name in spared if name not in pinned]
 
 
 def _joined(columns: Sequence[Column]) -> Column:
@@ -90,7 +131,8 @@ def _joined(columns: Sequence[Column]) -> Column:
     return Numbers(low, high, presence, flags)
 
 
-def _repeated(evaluation: Evaluation, trials: Sequence[Trial]) -> Facts:
+def _repeated(evaluation: Evaluation, trials: Sequence[Trial]) -> tuple[Facts, Mapping[str, Ints]]:
+    """The facts of the trials, and the rows of joints and of members that they repeat."""
     facts, quantities = evaluation.facts, evaluation.knowledge.quantities
     joints = np.array([trial.joint for trial in trials], np.intp)
     starts = np.searchsorted(facts.joint_of, joints, side="left")
@@ -111,7 +153,8 @@ def _repeated(evaluation: Evaluation, trials: Sequence[Trial]) -> Facts:
         count = len(rows[quantity.of])
         nothing = absent_numbers(count) if quantity.is_number else absent_levels(count)
         given[name] = _pinned(given.get(name, nothing), pinned)
-    return Facts(tuple(facts.joints[j] for j in joints), tuple(facts.members[m] for m in members), joint_of, given)
+    names = tuple(facts.joints[j] for j in joints), tuple(facts.members[m] for m in members)
+    return Facts(*names, joint_of, given), rows
 
 
 def _pinned(column: Column, pins: Sequence[tuple[int, Pin]]) -> Column:
