@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from weldbasis.knowledge import Quantity
@@ -10,6 +12,8 @@ from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Numbers
 
 # Above every temperature, time and level: a decision that may not be covered, and one that is not, ask most.
 MAY_BE_UNCOVERED, UNCOVERED = 1e12, np.inf
+# Of a quantity without a worse end, the end that `demanding_end` takes.
+_LEAST = {True: "lower", False: "first"}
 
 
 def state_of(value: Value, quantity: Quantity) -> DecisionState:
@@ -69,14 +73,9 @@ def demand_of(column: Column, quantity: Quantity) -> Floats:
     A number counts to the quantity's decimals. A decision that may be uncovered asks more than any that is
     covered, and one that surely is uncovered most.
     """
-    if isinstance(column, Numbers):
-        end = column.high if quantity.worse == "higher" else -column.low
-        asked = np.round(np.nan_to_num(end), quantity.decimals)
-    else:
-        mask = column.mask.astype(np.float64)
-        lowest = (column.mask & (~column.mask + np.uint64(1))).astype(np.float64)
-        asked = np.frexp(mask if quantity.worse == "last" else lowest)[1].astype(np.float64)
-        asked = asked if quantity.worse == "last" else -asked
+    stated = quantity if quantity.worse != "neither" else replace(quantity, worse=_LEAST[quantity.is_number])
+    worth = demand(column, stated)
+    assert worth is not None
+    asked = np.round(np.nan_to_num(worth), quantity.decimals)
     asked = np.where(column.presence == PRESENT, asked, MAY_BE_UNCOVERED + asked)
-    result: Floats = np.where(column.presence == ABSENT, UNCOVERED, asked)
-    return result
+    return np.where(column.presence == ABSENT, UNCOVERED, asked)

@@ -107,7 +107,7 @@ def decided_again(evaluation: Evaluation, trials: Sequence[Trial], wanted: Seque
             name: evaluation.columns[name].take(rows[quantities[name].of])
             for name in _untouched(evaluation, frozenset(pin.quantity for t in trials for pin in t.pins), wanted)
         }
-    return evaluate(evaluation.knowledge, facts, evaluation.graph, wanted, known)
+    return evaluate(evaluation.knowledge, facts, evaluation.graph, wanted, known=known)
 
 
 def _untouched(evaluation: Evaluation, pinned: frozenset[str], wanted: Sequence[str]) -> list[str]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import datetime
 import json
 from pathlib import Path
 
@@ -10,7 +11,7 @@ import click
 from rich.table import Table as Grid
 
 from weldbasis.against import consequences
-from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, knowledge_from, project_from, terminal
+from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
 from weldbasis.edges import Edge, edges
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.lever_words import bar_places, change_text, edge_text, free_text, hold_text, setting_text
@@ -42,8 +43,7 @@ def command(project: Path, joint: str, wish: str | None, kb: Path | None, as_jso
     --wish, the cheapest ways to a wished decision: the fewest levers, then the smallest change against what
     stands there now (of levels, against all of them).
     """
-    knowledge = knowledge_from(kb)
-    chosen = project_from(project, knowledge)
+    knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
     row = joint_row(chosen, joint)
     try:
         wished = read_wish(wish, knowledge) if wish else None
