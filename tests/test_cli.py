@@ -123,6 +123,31 @@ def test_why_tells_the_chain_and_offers_the_nearest_joint(started: Path) -> None
     assert data["format"] == "weldbasis-trace/1"
 
 
+def test_why_not_names_what_stands_against_and_levers_what_would_help(started: Path) -> None:
+    done = run("why", "quay-crane", "J1", "--not", "preheat 50 °C", cwd=started)
+    assert done.returncode == 0, done.stderr
+    words = " ".join(done.stdout.split())
+    assert "governs: " in words
+    assert words.index("for more than 50 °C:") < words.index("[preheat-cet-member]")
+    assert "en-1011-2, Annex C, C.3" in words
+    done = run("why", "quay-crane", "J1", "--not", "preheat 400", cwd=started)
+    assert "more than the rules ask for" in done.stdout
+    assert "interpass-below-preheat" in done.stdout
+    done = run("levers", "quay-crane", "J1", "--wish", "preheat <= 50", cwd=started)
+    assert done.returncode == 0, done.stderr
+    assert "H5 (now)" in done.stdout
+    assert "●" in done.stdout
+    assert "To reach minimum preheat and interpass temperature <= 50 °C" in done.stdout
+    assert max(len(line) for line in done.stdout.splitlines() if not line.startswith("Decisions")) <= 80
+    data = json.loads(run("levers", "quay-crane", "J1", "--wish", "preheat <= 50", "--json", cwd=started).stdout)
+    assert data["format"] == "weldbasis-levers/1"
+    assert data["ways"]
+    for line in (("why", "quay-crane", "J1", "--not", "warmth 5"), ("levers", "quay-crane", "J1", "--wish", "soon")):
+        done = run(*line, cwd=started)
+        assert done.returncode == 2
+        assert "Traceback" not in done.stderr
+
+
 def test_decide_ends_with_1_when_a_finding_stops_work(started: Path) -> None:
     done = run("decide", str(site_folder() / "projects" / "tideway-gates"), "--no-record", cwd=started)
     assert done.returncode == 1

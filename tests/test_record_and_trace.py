@@ -95,7 +95,7 @@ def test_open_decisions_say_what_would_settle_them(decided: list[tuple[Project, 
     texts = [f.text for f in trace_joint(millrace, row).findings if f.level == "hold"]
     assert texts == [
         "Minimum preheat and interpass temperature is open: 50 to 60 °C. "
-        "To know Heat input (now 0.9 to 1.4 kJ/mm) settles it."
+        "To know Heat input (now 0.9 to 1.4 kJ/mm) settles it: from 1.32 kJ/mm 50 °C, below that 60 °C."
     ]
 
 

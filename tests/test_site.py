@@ -66,6 +66,27 @@ def test_every_joint_answers_why_one_click_a_step(site: Published, knowledge: Kn
     assert f"{len(knowledge.rules)} rules" in (site.folder / "index.html").read_text(encoding="utf-8")
 
 
+def test_open_points_say_what_to_measure_and_give_a_sampling_order(site: Published) -> None:
+    text = (site.folder / "projects/millrace-footbridge/open-points.html").read_text(encoding="utf-8")
+    plan = text[text.index('id="plan"') :]
+    assert plan.index("web-1908") < plan.index("flange-1908")  # two joints for one sample before one
+    assert "from 1.32 kJ/mm 50 °C, below that 60 °C" in text
+    order = text[text.index('id="order"') :]
+    assert "old web plate, never sampled" in order
+    assert "C, Si, Mn" in order
+    assert "wb-screen" not in order
+    assert '<a href="open-points.html">' in (site.folder / "projects/millrace-footbridge/index.html").read_text("utf-8")
+
+
+def test_joint_pages_show_levers(site: Published) -> None:
+    text = (site.folder / "projects/tideway-gates/joints/G3.html").read_text(encoding="utf-8")
+    section = text[text.index('id="levers"') : text.index('id="inputs"')]
+    assert "from 1.65 kJ/mm: minimum preheat and interpass temperature 60 °C" in section
+    assert "is on the edge: carbon of j2-15 is 0.17 % as printed" in section
+    assert "<th>H5 (now)</th>" in section
+    assert "1.2 (now)" in section
+
+
 def test_every_page_carries_the_caution(site: Published) -> None:
     for path, text in pages(site):
         assert "responsible welding coordinator (ISO 14731) take precedence" in text, path

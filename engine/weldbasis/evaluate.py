@@ -31,6 +31,8 @@ class Evaluation:
     columns: Mapping[str, Column]
     findings: Mapping[str, Truth]
     overruled: Mapping[str, Column] = field(default_factory=dict)
+    # Whether every rule was worked out, not only those for some wanted quantities.
+    whole: bool = True
 
     @cached_property
     def views(self) -> Mapping[Scope, View]:
@@ -44,17 +46,19 @@ def evaluate(
     graph: KnowledgeGraph | None = None,
     wanted: Iterable[str] | None = None,
     kept: Evaluation | None = None,
+    known: Mapping[str, Column] | None = None,
 ) -> Evaluation:
     """Work out every quantity of every joint, or only what the `wanted` quantities rest on.
 
     `graph` spares building it again when several projects are evaluated. `kept` is what other rules made of the
-    same facts: what does not rest on a rule that differs is taken from it. Raises Refused where the rules
-    themselves cannot be used.
+    same facts: what does not rest on a rule that differs is taken from it. `known` holds columns of quantities
+    worked out already over the same rows: what the wanted ones rest on is followed no farther up than to them.
+    Raises Refused where the rules themselves cannot be used.
     """
     graph = graph or build_graph(knowledge)
-    needed = None if wanted is None else graph.rules_for(tuple(wanted))
+    needed = None if wanted is None else graph.rules_for(tuple(wanted), known or ())
     same = _untouched(kept, graph) if kept else frozenset()
-    columns: dict[str, Column] = dict(facts.given)
+    columns: dict[str, Column] = dict(facts.given) | dict(known or {})
     views = _views(knowledge, facts, columns)
     findings: dict[str, Truth] = {}
     overruled: dict[str, Column] = {}
@@ -80,7 +84,7 @@ def evaluate(
         if quantity.id not in columns:
             rows = views[quantity.of].rows
             columns[quantity.id] = absent_numbers(rows) if quantity.is_number else absent_levels(rows)
-    return Evaluation(knowledge, graph, facts, columns, findings, overruled)
+    return Evaluation(knowledge, graph, facts, columns, findings, overruled, needed is None)
 
 
 def _untouched(kept: Evaluation, graph: KnowledgeGraph) -> frozenset[str]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 from typing import NamedTuple
@@ -46,11 +46,15 @@ class KnowledgeGraph:
 
     def rests_on(self, node: Node) -> tuple[Node, ...]:
         """Everything upstream, near or far, in the order of evaluation."""
-        return self._sorted(nx.ancestors(self.graph, node))
+        if node not in self._above:
+            self._above[node] = self._sorted(nx.ancestors(self.graph, node))
+        return self._above[node]
 
     def bears_on(self, node: Node) -> tuple[Node, ...]:
         """Everything downstream, near or far, in the order of evaluation."""
-        return self._sorted(nx.descendants(self.graph, node))
+        if node not in self._below:
+            self._below[node] = self._sorted(nx.descendants(self.graph, node))
+        return self._below[node]
 
     def reads(self, node: Node) -> tuple[Node, ...]:
         """What stands directly above a node."""
@@ -60,15 +64,30 @@ class KnowledgeGraph:
         """What stands directly below a node."""
         return self._sorted(set(self.graph.successors(node)))
 
-    def rules_for(self, quantities: tuple[str, ...]) -> frozenset[str]:
-        """The rules that these quantities rest on."""
-        above = {node for name in quantities for node in nx.ancestors(self.graph, quantity_node(name))}
-        return frozenset(node.id for node in above if node.sort == "rule")
+    def rules_for(self, quantities: tuple[str, ...], known: Collection[str] = ()) -> frozenset[str]:
+        """The rules that these quantities rest on, not counting what only known ones rest on."""
+        found: set[str] = set()
+        queue = [name for name in quantities if name not in known]
+        while queue:
+            for rule in self.graph.predecessors(quantity_node(queue.pop())):
+                if rule.id not in found:
+                    found.add(rule.id)
+                    queue += [node.id for node in self.graph.predecessors(rule) if node.id not in known]
+        return frozenset(found)
 
     def given_inputs(self, quantity: str) -> tuple[str, ...]:
         """The quantities at the roots above a quantity: what a project has to say for it."""
         above = [*self.rests_on(quantity_node(quantity)), quantity_node(quantity)]
         return tuple(node.id for node in above if node.sort == "quantity" and not self.graph.in_degree(node))
+
+    @cached_property
+    def _above(self) -> dict[Node, tuple[Node, ...]]:
+        """What was found upstream of a node already; the graph never changes."""
+        return {}
+
+    @cached_property
+    def _below(self) -> dict[Node, tuple[Node, ...]]:
+        return {}
 
     @cached_property
     def _places(self) -> Mapping[Node, int]:

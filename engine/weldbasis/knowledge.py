@@ -27,6 +27,21 @@ class Level:
 
 
 @dataclass(frozen=True)
+class Lever:
+    """What the engineer can choose for a quantity, and how: a range in steps, or a few named settings.
+
+    Of a category all levels can be chosen. `table` holds the values shown in a joint's small table.
+    """
+
+    how: str
+    within: Range = Range(0.0, 0.0)
+    step: float = 0.0
+    settings: Mapping[str, float] = field(default_factory=dict)
+    table: tuple[float, ...] = ()
+    new_parts_only: bool = False
+
+
+@dataclass(frozen=True)
 class Quantity:
     """One fact a rule may read or give.
 
@@ -51,6 +66,9 @@ class Quantity:
     # Place among the decisions, 0 for a quantity that is none; parts belong to a decision.
     decision: int = 0
     part_of: str = ""
+    # The step to which papers print a reading, 0 where that is not said.
+    read_to: float = 0.0
+    lever: Lever | None = None
     topic: str = ""
     place: Place = Place("")
 

@@ -12,8 +12,8 @@ import rfc8785
 
 from weldbasis.ranges import Range, parse_range
 
-# Fields that say where a record stands, not what it means.
-_NOT_MEANING = frozenset({"place", "places", "layer", "topic"})
+# Fields that say where a record stands, not what it means; and what can be chosen, or how finely it is read.
+_NOT_MEANING = frozenset({"place", "places", "layer", "topic", "lever", "read_to"})
 # Words for readers: they are part of the meaning, and bear on no result.
 _WORDS = frozenset(
     {

@@ -18,8 +18,9 @@ from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
 from weldbasis.uncovered import nearest_text
 from weldbasis.values import Truth, may_be_at, surely_at
-from weldbasis.words import levels_text, range_text, with_unit
+from weldbasis.words import levels_text, number_text, range_text, with_unit
 
+_WITH_CASES, _MOST_CASES = 2, 4
 _NAME = re.compile(r"\{(\w+)\}")
 
 
@@ -337,26 +338,63 @@ def _undecided(
         text = f"{quantity.title} is open: {value_text(quantity, value)}"
         if value.presence == "maybe":
             text += ", or not covered"
-        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, row, narrowings.get((row, quantity.id), ()))}")
+        yield Finding(
+            "hold", rule, f"{text}. {settling_text(evaluation, row, quantity, narrowings.get((row, quantity.id), ()))}"
+        )
 
 
-def settling_text(evaluation: Evaluation, row: int, narrowings: tuple[Narrowing, ...]) -> str:
-    """What would settle a decision, best first."""
+def settling_text(evaluation: Evaluation, row: int, quantity: Quantity, narrowings: tuple[Narrowing, ...]) -> str:
+    """What would settle a decision, best first; the best two with where the decision turns."""
     if not narrowings:
-        return "No single input of the project narrows it."
-    return "To know " + "; ".join(_gain(evaluation, row, narrowing) for narrowing in narrowings[:4]) + "."
+        return "No input of the project narrows it, alone or with another."
+    gains = [_gain(evaluation, row, quantity, n, place < _WITH_CASES) for place, n in enumerate(narrowings[:4])]
+    return "To know " + "; ".join(gains) + "."
 
 
-def _gain(evaluation: Evaluation, row: int, narrowing: Narrowing) -> str:
+def _gain(evaluation: Evaluation, row: int, decision: Quantity, narrowing: Narrowing, with_cases: bool) -> str:
+    pairs = zip(narrowing.refs, narrowing.now, strict=True)
+    asked = " together with ".join(asked_text(evaluation, row, ref, now) for ref, now in pairs)
     gain = "settles it" if narrowing.settles else f"leaves {narrowing.left}"
-    member = narrowing.ref.member
-    name = evaluation.facts.members[_member_rows(evaluation, row)[member - 1]] if member else ""
-    if narrowing.ref.quantity == ANALYSIS:
-        return f"the whole analysis of {name} {gain}"
-    quantity = evaluation.knowledge.quantities[narrowing.ref.quantity]
+    cases = cases_text(evaluation, decision, narrowing) if with_cases else ""
+    return f"{asked} {gain}{': ' + cases if cases else ''}"
+
+
+def asked_text(evaluation: Evaluation, row: int, ref: Ref, now: Value) -> str:
+    """What is to be found out, with what is known of it: "Carbon of web (now 0.05 to 0.25 %)"."""
+    name = evaluation.facts.members[_member_rows(evaluation, row)[ref.member - 1]] if ref.member else ""
+    if ref.quantity == ANALYSIS:
+        return f"the whole analysis of {name}"
+    quantity = evaluation.knowledge.quantities[ref.quantity]
     title = quantity.title if quantity.symbol else quantity.title.lower()
-    whose = f" of {name}" if member else ""
-    return f"{title}{whose} (now {value_text(quantity, narrowing.now)}) {gain}"
+    return f"{title}{f' of {name}' if name else ''} (now {value_text(quantity, now)})"
+
+
+def cases_text(evaluation: Evaluation, decision: Quantity, narrowing: Narrowing) -> str:
+    """Where a decision turns: "up to 0.14 % 50 °C, above that 60 to 140 °C"; nothing where it does not turn."""
+    if not 1 < len(narrowing.cases) <= _MOST_CASES:
+        return ""
+    asked = evaluation.knowledge.quantities[narrowing.ref.quantity]
+    outcomes = [outcome_text(decision, case.outcome) for case in narrowing.cases]
+    if asked.levels:
+        return ", ".join(
+            f"{levels_text(asked, case.found.any_of)} {outcome}"
+            for case, outcome in zip(narrowing.cases, outcomes, strict=True)
+        )
+    easy, rest = (case.found for case in narrowing.cases)
+    assert easy.low is not None
+    assert easy.high is not None
+    assert rest.low is not None
+    rising = rest.low > easy.low
+    edge = with_unit(number_text(easy.high if rising else easy.low, asked.decimals), asked.unit)
+    words = ("up to", "above") if rising else ("from", "below")
+    return f"{words[0]} {edge} {outcomes[0]}, {words[1]} that {outcomes[1]}"
+
+
+def outcome_text(decision: Quantity, value: Value) -> str:
+    """A decision's set in words, with the doubt whether it is covered."""
+    if value.presence == "absent":
+        return "not covered"
+    return value_text(decision, value) + (" or not covered" if value.presence == "maybe" else "")
 
 
 def bears_on_text(evaluation: Evaluation, quantity: str) -> tuple[str, ...]:

@@ -2,11 +2,18 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from weldbasis.knowledge import Quantity
 from weldbasis.trace import DecisionState, Value
 from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Numbers
+
+# Above every temperature, time and level: a decision that may not be covered, and one that is not, ask most.
+MAY_BE_UNCOVERED, UNCOVERED = 1e12, np.inf
+# Of a quantity without a worse end, the end that `demanding_end` takes.
+_LEAST = {True: "lower", False: "first"}
 
 
 def state_of(value: Value, quantity: Quantity) -> DecisionState:
@@ -58,3 +65,17 @@ def demand(column: Column, quantity: Quantity) -> Floats | None:
         last = len(quantity.order) - 1 - np.argmax(bits[:, ::-1], axis=1)
         worth = (last if quantity.worse == "last" else -np.argmax(bits, axis=1)).astype(np.float64)
     return np.where(column.presence == ABSENT, -np.inf, worth)
+
+
+def demand_of(column: Column, quantity: Quantity) -> Floats:
+    """How much each row asks of the shop at its demanding end, as a number that rises with it.
+
+    A number counts to the quantity's decimals. A decision that may be uncovered asks more than any that is
+    covered, and one that surely is uncovered most.
+    """
+    stated = quantity if quantity.worse != "neither" else replace(quantity, worse=_LEAST[quantity.is_number])
+    worth = demand(column, stated)
+    assert worth is not None
+    asked = np.round(np.nan_to_num(worth), quantity.decimals)
+    asked = np.where(column.presence == PRESENT, asked, MAY_BE_UNCOVERED + asked)
+    return np.where(column.presence == ABSENT, UNCOVERED, asked)

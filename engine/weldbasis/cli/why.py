@@ -10,12 +10,15 @@ from pathlib import Path
 import click
 from rich.padding import Padding
 
+from weldbasis.against import why_not_value
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
+from weldbasis.cli.why_not import show_why_not
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.problem import nearest
 from weldbasis.reasons import bears_on_text, trace_joint, value_text
 from weldbasis.trace import Decision, JointTrace, Ref, Step
 from weldbasis.views import decision_text
+from weldbasis.wishes import read_wish
 
 
 @click.command("why")
@@ -28,10 +31,25 @@ from weldbasis.views import decision_text
     metavar="ID",
     help="Only this decision, for example min_preheat. Any other quantity of the vocabulary works too.",
 )
+@click.option(
+    "--not",
+    "instead",
+    default=None,
+    metavar="TEXT",
+    help='Why not another value, for example "preheat 50" or "hydrogen class H15": what stands against it.',
+)
 @click.option("--all", "everything", is_flag=True, help="Every step, also those that gave nothing.")
 @kb_option
 @json_option
-def command(project: Path, joint: str, wanted: str | None, everything: bool, kb: Path | None, as_json: bool) -> None:
+def command(
+    project: Path,
+    joint: str,
+    wanted: str | None,
+    instead: str | None,
+    everything: bool,
+    kb: Path | None,
+    as_json: bool,
+) -> None:
     """Say why: the decisions of JOINT in PROJECT, each as a chain of sentences down to the inputs.
 
     Every line names the rule it comes from in brackets; `weldbasis publish` makes the same trace a page
@@ -39,7 +57,14 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
     """
     knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
     row = joint_row(chosen, joint)
+    try:
+        wish = read_wish(instead, knowledge) if instead else None
+    except ValueError as fault:
+        raise click.BadParameter(str(fault), param_hint="--not") from fault
     evaluation = evaluate(knowledge, chosen.facts)
+    if wish:
+        show_why_not(evaluation, row, why_not_value(evaluation, row, wish), as_json)
+        return
     trace = trace_joint(evaluation, row)
     if wanted and wanted not in knowledge.quantities:
         raise click.BadParameter(

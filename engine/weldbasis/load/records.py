@@ -16,6 +16,7 @@ from weldbasis.knowledge import (
     Grade,
     GradeBand,
     Level,
+    Lever,
     Limits,
     Quantity,
     Read,
@@ -91,8 +92,21 @@ def quantity_from(data: Mapping[str, Any], document: Document, path: Path_, topi
         if_not_given_because=data.get("because", ""),
         decision=data.get("decision", 0),
         part_of=data.get("part_of", ""),
+        read_to=float(data.get("read_to", 0.0)),
+        lever=_lever_from(data["lever"], (*path, "lever")) if "lever" in data else None,
         topic=topic,
         place=document.place(*path, "id"),
+    )
+
+
+def _lever_from(data: Mapping[str, Any], path: Path_) -> Lever:
+    return Lever(
+        data["how"],
+        range_at(data["within"], (*path, "within")) if "within" in data else Range(0.0, 0.0),
+        float(data.get("step", 0.0)),
+        {name: float(value) for name, value in data.get("settings", {}).items()},
+        tuple(float(value) for value in data.get("table", ())),
+        data.get("only") == "new-parts",
     )
 
 

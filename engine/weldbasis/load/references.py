@@ -58,6 +58,7 @@ def _quantity_problems(quantity: Quantity, knowledge: Knowledge) -> Iterator[Pro
             f"{quantity.id} is part of {quantity.part_of!r}, which is no quantity",
             do=nearest(quantity.part_of, knowledge.quantities),
         )
+    yield from _lever_problems(quantity)
     default = quantity.if_not_given
     if default in ("absent", "unknown"):
         return
@@ -71,6 +72,20 @@ def _quantity_problems(quantity: Quantity, knowledge: Knowledge) -> Iterator[Pro
         check_value(quantity, default)
     except ValueError as fault:
         yield Problem(quantity.place, f"if_not_given of {quantity.id}: {fault}")
+
+
+def _lever_problems(quantity: Quantity) -> Iterator[Problem]:
+    """A number that is a lever is set in steps inside a range that it can have, or to named values."""
+    lever = quantity.lever
+    if lever is None or not quantity.is_number or lever.settings:
+        return
+    if not lever.step or not 0 < lever.within.low < lever.within.high < float("inf"):
+        yield Problem(
+            quantity.place,
+            f"{quantity.id} is a lever without a step and a range above nothing in which it can be set",
+            "nothing could be tried",
+            'add within: "[low, high]" and step, or settings with names',
+        )
 
 
 def _decision_problems(knowledge: Knowledge) -> Iterator[Problem]:

@@ -12,12 +12,15 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from weldbasis.edges import Edge, edges
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
+from weldbasis.levers import JointLevers, levers
 from weldbasis.project import Project, read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record, record_of_joints
+from weldbasis.sampling import Plan, plan_samples
 from weldbasis.settle import Narrowing, settle
 from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
@@ -38,6 +41,9 @@ class Decided:
     files: Mapping[str, str]
     counts: Mapping[str, int]
     stopped: tuple[str, ...]
+    levers: Mapping[int, JointLevers]
+    edges: Mapping[int, tuple[Edge, ...]]
+    plan: Plan
 
 
 @dataclass(frozen=True)
@@ -75,7 +81,9 @@ def decide_project(project: Project, knowledge: Knowledge, graph: KnowledgeGraph
     counts = {state: states[state] for state in ("settled", "open", "uncovered")}
     stopped = tuple(trace.joint for trace in traces if any(f.level == "stop" for f in trace.findings))
     files = file_names([trace.joint for trace in traces])
-    return Decided(project, evaluation, narrowings, traces, record, files, counts, stopped)
+    rows = range(count)
+    choices, near, plan = levers(evaluation, rows), edges(evaluation, rows), plan_samples(evaluation, rows)
+    return Decided(project, evaluation, narrowings, traces, record, files, counts, stopped, choices, near, plan)
 
 
 def file_names(joints: Sequence[str]) -> dict[str, str]:

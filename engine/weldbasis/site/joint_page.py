@@ -36,8 +36,10 @@ class Line:
     member: str
 
 
-def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace: JointTrace, digest: str) -> str:
-    """The HTML of a joint's page."""
+def joint_body(
+    project: Project, entry: JointEntry, knowledge: Knowledge, trace: JointTrace, digest: str, levers: str = ""
+) -> str:
+    """The HTML of a joint's page; `levers` is its finished section of levers."""
     shown = [
         d for d in trace.decisions if not (knowledge.quantities[d.ref.quantity].part_of and d.state == "uncovered")
     ]
@@ -52,6 +54,7 @@ def joint_body(project: Project, entry: JointEntry, knowledge: Knowledge, trace:
         shown=shown,
         main=main,
         digest=digest,
+        levers=Markup(levers),
         picture=thermal_cycle(cycle_of(trace)),
         chains={d.ref.quantity: chain_lines(knowledge, trace, d) for d in main},
         methods=methods_of(knowledge, trace),

@@ -20,6 +20,8 @@ from weldbasis.record import canonical_bytes
 from weldbasis.site.content import Content, Decided, Progress, joints_csv
 from weldbasis.site.guard_page import guard_body
 from weldbasis.site.joint_page import joint_body
+from weldbasis.site.levers_section import levers_html
+from weldbasis.site.open_points_page import open_points_body
 from weldbasis.site.pages import (
     home_body,
     project_body,
@@ -75,6 +77,10 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
             (f"projects/{d.project.id}/index.md", d.project.title, project_body(content, d)) for d in content.projects
         ]
         pages += [
+            (f"projects/{d.project.id}/open-points.md", f"Open points, {d.project.title}", open_points_body(d))
+            for d in content.projects
+        ]
+        pages += [
             ("rules/index.md", "Rules", rules_body(content)),
             ("rules/guarded.md", "How well guarded", guard_body(content.knowledge)),
             ("steels/index.md", "Steels", steels_body(content)),
@@ -112,7 +118,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
             "vocabulary",
             "how-to-read",
             "cautions",
-            *[d.project.id for d in self.content.projects],
+            *[page for d in self.content.projects for page in (d.project.id, "open-points")],
         ]
 
     def _rule_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
@@ -172,7 +178,8 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         def write(row: int) -> dict[str, str]:
             entry = decided.project.joints[row]
             trace = trace_joint(decided.evaluation, row, decided.narrowings)
-            body = joint_body(decided.project, entry, knowledge, trace, digests[row])
+            choices = levers_html(decided.evaluation, row, decided.levers[row], decided.edges.get(row, ()))
+            body = joint_body(decided.project, entry, knowledge, trace, digests[row], choices)
             uri = f"projects/{decided.project.id}/joints/{decided.files[entry.id]}"
             words = f"{', '.join(trace.members[:-1])}. {_summary(knowledge, trace)}"
             return _write(site, uri, frame, f"{entry.id} {entry.title}".strip(), body, words)
