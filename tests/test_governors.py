@@ -11,7 +11,8 @@ from weldbasis.governors import governors
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
 from weldbasis.project import read_project
-from weldbasis.reasons import Steps, governing_rules
+from weldbasis.reasons import governing_rules
+from weldbasis.steps import Steps
 from weldbasis.trace import Ref
 
 

@@ -6,9 +6,10 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from weldbasis.evaluate import Evaluation
+from weldbasis.findings import findings_of
 from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
-from weldbasis.reasons import findings_of, trace_joint
+from weldbasis.reasons import trace_joint
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Finding, JointTrace, Ref, Step, Value
 from weldbasis.trials import Pin, Trial, decided_again

@@ -20,7 +20,7 @@ from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Refused
 from weldbasis.project import Project, read_project
 from weldbasis.reading import value_of
-from weldbasis.reasons import value_text
+from weldbasis.sentences import value_text
 from weldbasis.state import demand, state_of
 from weldbasis.values import Bools, Column, Floats, Numbers
 

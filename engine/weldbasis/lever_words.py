@@ -8,7 +8,7 @@ from weldbasis.edges import Edge
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
 from weldbasis.levers import Change, Hold, Margin
-from weldbasis.reasons import outcome_text
+from weldbasis.sentences import outcome_text
 from weldbasis.trials import member_rows
 from weldbasis.words import level_titles, number_text, with_unit
 

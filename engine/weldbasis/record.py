@@ -18,8 +18,9 @@ from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project
-from weldbasis.reasons import trace_joint, values_of
+from weldbasis.reasons import trace_joint
 from weldbasis.settle import settle
+from weldbasis.steps import values_of
 from weldbasis.trace import JointTrace, Value
 
 FORMAT = "weldbasis-record/1"

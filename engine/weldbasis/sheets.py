@@ -18,8 +18,8 @@ from weldbasis.lattice import Lattice, lattice, steel_of_era, steel_of_grade
 from weldbasis.project.grades import limits_in, reach_of
 from weldbasis.ranges import Range
 from weldbasis.reading import value_of
-from weldbasis.reasons import Steps
 from weldbasis.state import demanding_end
+from weldbasis.steps import Steps
 from weldbasis.trace import Ref, Value
 from weldbasis.uncovered import nearest_text
 

@@ -6,7 +6,7 @@ from collections import Counter
 from collections.abc import Sequence
 
 from weldbasis.knowledge import Quantity
-from weldbasis.reasons import value_text
+from weldbasis.sentences import value_text
 from weldbasis.trace import Decision, Finding
 
 

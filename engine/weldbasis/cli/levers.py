@@ -17,7 +17,7 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.lever_words import bar_places, change_text, edge_text, free_text, hold_text, setting_text
 from weldbasis.levers import JointLevers, Margin, Table, levers
 from weldbasis.reading import value_of
-from weldbasis.reasons import outcome_text, value_text
+from weldbasis.sentences import outcome_text, value_text
 from weldbasis.wishes import Way, Wish, cheapest, read_wish, trial_of
 from weldbasis.words import number_text, range_text, with_unit
 

@@ -15,7 +15,8 @@ from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, ru
 from weldbasis.cli.why_not import show_why_not
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.problem import nearest
-from weldbasis.reasons import bears_on_text, trace_joint, value_text
+from weldbasis.reasons import bears_on_text, trace_joint
+from weldbasis.sentences import value_text
 from weldbasis.trace import Decision, JointTrace, Ref, Step
 from weldbasis.views import decision_text
 from weldbasis.wishes import read_wish

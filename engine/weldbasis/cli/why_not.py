@@ -12,7 +12,7 @@ from weldbasis.against import WhyNot
 from weldbasis.cli.console import CAUTION, terminal
 from weldbasis.evaluate import Evaluation
 from weldbasis.lever_words import setting_text
-from weldbasis.reasons import outcome_text
+from weldbasis.sentences import outcome_text
 
 
 def show_why_not(evaluation: Evaluation, row: int, found: WhyNot, as_json: bool) -> None:

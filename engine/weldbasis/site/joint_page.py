@@ -9,7 +9,7 @@ from markupsafe import Markup
 
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.project import JointEntry, Project
-from weldbasis.reasons import value_text
+from weldbasis.sentences import value_text
 from weldbasis.site.pictures import Cycle, method_strip, thermal_cycle
 from weldbasis.site.render import page, value_html
 from weldbasis.trace import Candidate, Decision, JointTrace, Ref, Step

@@ -9,7 +9,7 @@ from weldbasis.edges import Edge
 from weldbasis.evaluate import Evaluation
 from weldbasis.lever_words import bar_places, change_text, edge_text, free_text, hold_text
 from weldbasis.levers import JointLevers, Margin, Table
-from weldbasis.reasons import outcome_text, value_text
+from weldbasis.sentences import outcome_text, value_text
 from weldbasis.site.render import page
 from weldbasis.words import range_text, unit_text
 

@@ -6,10 +6,10 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from weldbasis.evaluate import Evaluation
+from weldbasis.findings import cases_text
 from weldbasis.kinds.condition import Condition
 from weldbasis.knowledge import Quantity
 from weldbasis.project.steels import ELEMENTS
-from weldbasis.reasons import cases_text
 from weldbasis.sampling import Plan, Steel
 from weldbasis.settle import ANALYSIS, open_analyses, open_decisions, steels_of
 from weldbasis.site.content import Decided

@@ -10,7 +10,7 @@ from markupsafe import Markup, escape
 
 from weldbasis.knowledge import Quantity
 from weldbasis.places import site_folder
-from weldbasis.reasons import value_text
+from weldbasis.sentences import value_text
 from weldbasis.trace import Value
 
 CHECKED_WORDS = {
