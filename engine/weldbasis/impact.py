@@ -6,7 +6,7 @@ Both sets decide all joints; then every change is switched on alone, so that eac
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Literal
 
@@ -72,6 +72,8 @@ class ProjectImpact:
     moves: tuple[Move, ...]
     causes: tuple[Cause, ...]
     together: tuple[str, ...]
+    old: Evaluation = field(compare=False, repr=False)
+    new: Evaluation = field(compare=False, repr=False)
 
     @property
     def joints(self) -> tuple[str, ...]:
@@ -151,19 +153,20 @@ def _project_impact(
     project = read_project(folder, sets[0])
     other = project if _read_alike(*sets) else read_project(folder, sets[1])
     old = evaluate(sets[0], project.facts, graphs[0])
-    moves = moves_between(old, evaluate(sets[1], other.facts, graphs[1]))
+    new = evaluate(sets[1], other.facts, graphs[1])
+    moves = moves_between(old, new)
     causes = []
     for switch in switches:
         alike = _read_alike(sets[0], switch.knowledge)
         facts = project.facts if alike else read_project(folder, switch.knowledge).facts
         if switch.graph:
-            new = evaluate(switch.knowledge, facts, switch.graph, kept=old if alike else None)
-            causes.append(Cause(switch.differences, moves_between(old, new)))
+            one = evaluate(switch.knowledge, facts, switch.graph, kept=old if alike else None)
+            causes.append(Cause(switch.differences, moves_between(old, one)))
         else:
             causes.append(Cause(switch.differences, ()))
     explained = {move.joint for cause in causes for move in cause.moves}
     together = tuple(dict.fromkeys(move.joint for move in moves if move.joint not in explained))
-    return ProjectImpact(project, moves, tuple(causes), together)
+    return ProjectImpact(project, moves, tuple(causes), together, old, new)
 
 
 def _read_alike(one: Knowledge, other: Knowledge) -> bool:

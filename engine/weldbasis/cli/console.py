@@ -45,26 +45,28 @@ def terminal() -> Console:
     return Console(highlight=False, width=80, color_system=None)
 
 
-def rules_and_project(folder: Path, kb: Path | None, today: datetime.date | None = None) -> tuple[Knowledge, Project]:
+def rules_and_project(
+    folder: Path, kb: Path | None, today: datetime.date | None = None, with_cases: bool = False
+) -> tuple[Knowledge, Project]:
     """The rules that a project is decided with, and the project. Concessions that ran out before `today` stop it.
 
     Without `today` the calendar does not count: a record is proved as of its own time.
     """
-    knowledge = rules_for(folder, kb)
+    knowledge = rules_for(folder, kb, with_cases)
     project = read_project(folder, knowledge)
     if today and (problems := expired(project.concessions, today)):
         raise Refused(problems)
     return knowledge, project
 
 
-def rules_for_all(folders: Sequence[Path], kb: Path | None) -> Knowledge:
-    """The one set of rules that several projects are decided with, with its cases."""
-    sets = [rules_for(folder, kb, with_cases=True) for folder in folders]
-    other = next((at for at, rules in zip(folders, sets, strict=True) if rules.digest != sets[0].digest), None)
-    if other is not None:
-        what = f"this project is decided with other rules than {folders[0]}"
-        raise Refused([Problem(Place(str(other)), what, "a site shows one set of rules", "publish them apart")])
-    return sets[0]
+def rules_for_all(folders: Sequence[Path], kb: Path | None) -> list[tuple[Knowledge, list[Path]]]:
+    """The sets of rules that projects are decided with, each with its projects; the set of most projects first."""
+    today = datetime.date.today()
+    found: dict[str, tuple[Knowledge, list[Path]]] = {}
+    for folder in folders:
+        knowledge, _ = rules_and_project(folder, kb, today, with_cases=True)
+        found.setdefault(knowledge.digest, (knowledge, []))[1].append(folder)
+    return sorted(found.values(), key=lambda one: -len(one[1]))
 
 
 def private_key(path: Path) -> Ed25519PrivateKey:

@@ -31,10 +31,12 @@ def command(projects: tuple[Path, ...], folder: Path, kb: Path | None) -> None:
     make is never replaced.
     """
     chosen = projects or tuple(sorted(p.parent for p in (site_folder() / "projects").glob("*/project.yaml")))
-    knowledge = rules_for_all(chosen, kb)
+    (knowledge, first), *others = rules_for_all(chosen, kb)
     with progress("publishing", 100) as bar:
         task = bar.task_ids[0]
-        made = publish(chosen, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total))
+        made = publish(
+            first, folder, knowledge, lambda done, total: bar.update(task, completed=done, total=total), others
+        )
     home = (made.folder / "index.html").resolve()
     click.echo(f"Published {counted(len(chosen), 'project')}, {counted(made.joints, 'joint')}, {made.pages} pages.")
     click.echo(f"Open {home.as_uri()} in any browser; no network is needed.")

@@ -7,21 +7,28 @@ import dataclasses
 import io
 import re
 from collections import Counter
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from weldbasis.changes import differences_between
 from weldbasis.edges import Edge, edges
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, build_graph
+from weldbasis.history import Kept, kept_records
+from weldbasis.impact import ProjectImpact, impact
 from weldbasis.knowledge import Knowledge
 from weldbasis.levers import JointLevers, levers
+from weldbasis.load.knowledge import load_knowledge
 from weldbasis.project import Project, read_project
+from weldbasis.project.pinned import project_document, rules_folder
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record, record_of_joints
+from weldbasis.releases import releases_of
 from weldbasis.sampling import Plan, plan_samples
 from weldbasis.settle import Narrowing, settle
+from weldbasis.sign_offs import SIGN_OFFS, Standing, read_sign_offs, standing_of
 from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text
@@ -44,15 +51,29 @@ class Decided:
     levers: Mapping[int, JointLevers]
     edges: Mapping[int, tuple[Edge, ...]]
     plan: Plan
+    standings: tuple[Standing, ...] = ()
+    records: tuple[Kept, ...] = ()
+    impacts: tuple[tuple[str, str, ProjectImpact], ...] = ()
+
+
+@dataclass(frozen=True)
+class Beside:
+    """A site of projects that are decided with other rules, in a folder of its own below the first."""
+
+    folder: str
+    release: str
+    titles: tuple[str, ...]
 
 
 @dataclass(frozen=True)
 class Content:
-    """All that a site is made from."""
+    """All that a site is made from. `beside` names sites below it, `back` the address of the one above."""
 
     knowledge: Knowledge
     graph: KnowledgeGraph
     projects: tuple[Decided, ...]
+    beside: tuple[Beside, ...] = ()
+    back: str = ""
 
 
 def decide_projects(folders: Sequence[Path], knowledge: Knowledge, progress: Progress) -> Content:
@@ -83,7 +104,49 @@ def decide_project(project: Project, knowledge: Knowledge, graph: KnowledgeGraph
     files = file_names([trace.joint for trace in traces])
     rows = range(count)
     choices, near, plan = levers(evaluation, rows), edges(evaluation, rows), plan_samples(evaluation, rows)
-    return Decided(project, evaluation, narrowings, traces, record, files, counts, stopped, choices, near, plan)
+    shown = str(project.folder / SIGN_OFFS)
+    signed = standing_of(
+        read_sign_offs(project.folder, project.facts.joints, shown), record, evaluation, project.folder
+    )
+    return Decided(
+        project,
+        evaluation,
+        narrowings,
+        traces,
+        record,
+        files,
+        counts,
+        stopped,
+        choices,
+        near,
+        plan,
+        signed,
+        kept_records(project.folder),
+        tuple(_impacts(project, knowledge)),
+    )
+
+
+def _impacts(project: Project, knowledge: Knowledge) -> Iterator[tuple[str, str, ProjectImpact]]:
+    """What the release that a project pins changed, and what the working rules would change next."""
+    folder = rules_folder(project.folder, project_document(project.folder), None)
+    releases = {release.name: release for release in releases_of(folder)}
+    if not releases or (knowledge.release != "working" and knowledge.release not in releases):
+        return
+    names = list(releases)
+    pairs = []
+    if knowledge.release == "working":
+        pairs.append((names[-1], "working"))
+    else:
+        at = names.index(knowledge.release)
+        pairs += [(names[at - 1], names[at])] if at else []
+        pairs += [(names[at], "working")]
+    for before, after in pairs:
+        sets = [
+            knowledge if name == knowledge.release else load_knowledge(folder, with_cases=False, release=name)
+            for name in (before, after)
+        ]
+        if any(difference.results for difference in differences_between(sets[0], sets[1])):
+            yield before, after, impact(sets[0], sets[1], [project.folder])[0]
 
 
 def file_names(joints: Sequence[str]) -> dict[str, str]:

@@ -37,9 +37,15 @@ class Line:
 
 
 def joint_body(
-    project: Project, entry: JointEntry, knowledge: Knowledge, trace: JointTrace, digest: str, levers: str = ""
+    project: Project,
+    entry: JointEntry,
+    knowledge: Knowledge,
+    trace: JointTrace,
+    digest: str,
+    levers: str = "",
+    past: str = "",
 ) -> str:
-    """The HTML of a joint's page; `levers` is its finished section of levers."""
+    """The HTML of a joint's page; `levers` and `past` are its finished sections of levers and of what was."""
     shown = [
         d for d in trace.decisions if not (knowledge.quantities[d.ref.quantity].part_of and d.state == "uncovered")
     ]
@@ -54,6 +60,7 @@ def joint_body(
         shown=shown,
         main=main,
         digest=digest,
+        past=past,
         levers=Markup(levers),
         picture=thermal_cycle(cycle_of(trace)),
         chains={d.ref.quantity: chain_lines(knowledge, trace, d) for d in main},

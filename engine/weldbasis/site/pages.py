@@ -11,6 +11,7 @@ from weldbasis.graph import Node, rule_node
 from weldbasis.knowledge import Era, Grade, Knowledge, Quantity, Rule
 from weldbasis.project import SteelEntry
 from weldbasis.site.content import Content, Decided, file_names
+from weldbasis.site.past import signed_joints
 from weldbasis.site.pictures import neighbours
 from weldbasis.site.render import page
 from weldbasis.words import number_text, unit_text
@@ -35,6 +36,8 @@ def home_body(content: Content) -> str:
     return page(
         "home.html",
         projects=content.projects,
+        beside=content.beside,
+        back=content.back,
         rules=knowledge.rules,
         release=knowledge.release,
         digest=knowledge.digest,
@@ -57,6 +60,7 @@ def project_body(content: Content, decided: Decided) -> str:
         )
     holds = [(t.joint, f) for level in ("stop", "hold") for t in decided.traces for f in t.findings if f.level == level]
     steels = list(decided.project.steels.values())
+    signed = signed_joints(decided)
     used = [e for e in ELEMENTS if any(e in steel.composition for steel in steels)]
     return page(
         "project.html",
@@ -66,6 +70,8 @@ def project_body(content: Content, decided: Decided) -> str:
         rows=rows,
         holds=holds,
         sheets=sheet_files(content.knowledge),
+        signed=signed,
+        changes=bool(decided.impacts),
         files=decided.files,
         steels=steels,
         elements=used,

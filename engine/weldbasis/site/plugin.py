@@ -19,6 +19,7 @@ from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes
 from weldbasis.site.content import Content, Decided, Progress, joints_csv
 from weldbasis.site.guard_page import guard_body
+from weldbasis.site.house_page import house_body, impact_body
 from weldbasis.site.joint_page import joint_body
 from weldbasis.site.levers_section import levers_html
 from weldbasis.site.open_points_page import open_points_body
@@ -34,6 +35,7 @@ from weldbasis.site.pages import (
     steels_body,
     vocabulary_body,
 )
+from weldbasis.site.past import past_html
 from weldbasis.site.sheet_page import sheet_body, sheets_of, title_of
 from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
@@ -42,6 +44,7 @@ from weldbasis.views import decision_text
 _TITLE, _BODY = "WBTITLEWB", "WBBODYWB"
 _FRAMES = {1: "rules/_frame.md", 3: "projects/_frame/joints/_frame.md"}
 _SEARCH = "search/search_index.json"
+_WRITTEN = 2  # pages that stand as they were written: how to read a trace, cautions
 
 
 class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  # mkdocs' base is untyped
@@ -81,6 +84,13 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
             for d in content.projects
         ]
         pages += [
+            (f"projects/{d.project.id}/changes.md", f"What changes move, {d.project.title}", _impact_page(d))
+            for d in content.projects
+            if d.impacts
+        ]
+        if content.knowledge.amendments:
+            pages.append(("rules/house.md", "House rules", house_body(content.knowledge)))
+        pages += [
             ("rules/index.md", "Rules", rules_body(content)),
             ("rules/guarded.md", "How well guarded", guard_body(content.knowledge)),
             ("steels/index.md", "Steels", steels_body(content)),
@@ -101,25 +111,12 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
             path.unlink()
         frames[3].parent.rmdir()
         frames[3].parent.parent.rmdir()
-        self.pages = len(self._navigated_names()) + sum(len(entries) for entries in found)
+        self.pages = len(self._navigated()) + _WRITTEN + sum(len(entries) for entries in found)
         index = site / _SEARCH
         data = json.loads(index.read_text(encoding="utf-8"))
         data["docs"] = [doc for doc in data["docs"] if "_frame" not in doc["location"]]
         data["docs"] += [entry for entries in found for entry in entries]
         index.write_text(json.dumps(data, ensure_ascii=False, separators=(",", ":")), encoding="utf-8")
-
-    def _navigated_names(self) -> list[str]:
-        return [
-            "home",
-            "rules",
-            "guarded",
-            "steels",
-            "sources",
-            "vocabulary",
-            "how-to-read",
-            "cautions",
-            *[page for d in self.content.projects for page in (d.project.id, "open-points")],
-        ]
 
     def _rule_pages(self, site: Path, frame: str) -> list[dict[str, str]]:
         governed = self._governed()
@@ -179,12 +176,17 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
             entry = decided.project.joints[row]
             trace = trace_joint(decided.evaluation, row, decided.narrowings)
             choices = levers_html(decided.evaluation, row, decided.levers[row], decided.edges.get(row, ()))
-            body = joint_body(decided.project, entry, knowledge, trace, digests[row], choices)
+            past = past_html(decided, entry.id)
+            body = joint_body(decided.project, entry, knowledge, trace, digests[row], choices, past)
             uri = f"projects/{decided.project.id}/joints/{decided.files[entry.id]}"
             words = f"{', '.join(trace.members[:-1])}. {_summary(knowledge, trace)}"
             return _write(site, uri, frame, f"{entry.id} {entry.title}".strip(), body, words)
 
         return each_row(write, count, lambda done: self.progress(count + done, 2 * count))
+
+
+def _impact_page(decided: Decided) -> str:
+    return impact_body(decided.project.title, decided.impacts, decided.files)
 
 
 def _summary(knowledge: Knowledge, trace: JointTrace) -> str:

@@ -7,13 +7,13 @@ import os
 import shutil
 import tempfile
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 from weldbasis.knowledge import Knowledge
 from weldbasis.places import site_folder
 from weldbasis.problem import Place, Problem, Refused
-from weldbasis.site.content import Content, Progress, decide_projects
+from weldbasis.site.content import Beside, Content, Progress, decide_projects, file_names
 
 _MARK = ".weldbasis-site"
 _MARK_TEXT = "This folder was made by weldbasis publish, which may replace it as a whole.\n"
@@ -42,24 +42,39 @@ class _Complaints(logging.Handler):
         self.messages.append(record.getMessage())
 
 
-def publish(projects: Sequence[Path], to: Path, knowledge: Knowledge, progress: Progress) -> Published:
+def publish(
+    projects: Sequence[Path],
+    to: Path,
+    knowledge: Knowledge,
+    progress: Progress,
+    others: Sequence[tuple[Knowledge, Sequence[Path]]] = (),
+) -> Published:
     """Decide the projects and write their site to the folder `to`.
 
-    Raises Refused where a project is wrong, or where `to` holds anything that weldbasis did not make.
+    `others` are projects decided with other rules: each set of rules gets a whole site of its own below. Raises
+    Refused where a project is wrong, or where `to` holds anything that weldbasis did not make.
     """
     to = to.absolute()  # mkdocs would take a relative folder from where mkdocs.yml lies
     _refuse_foreign(to)
-    content = decide_projects(projects, knowledge, progress)
+    below = [replace(decide_projects(folders, rules, progress), back="../index.html") for rules, folders in others]
+    names = file_names([f"rules {content.knowledge.release}" for content in below])
+    beside = tuple(
+        Beside(file.removesuffix(".html"), content.knowledge.release, tuple(d.project.title for d in content.projects))
+        for content, file in zip(below, names.values(), strict=True)
+    )
+    content = replace(decide_projects(projects, knowledge, progress), beside=beside)
     to.parent.mkdir(parents=True, exist_ok=True)
     aside = Path(tempfile.mkdtemp(prefix=f".{to.name}.", dir=to.parent))
     try:
         pages = _build(content, aside, progress)
+        for one, where in zip(below, beside, strict=True):
+            pages += _build(one, aside / where.folder, progress)
         (aside / _MARK).write_text(_MARK_TEXT, encoding="utf-8")
         aside.chmod(0o755)
         _swap(aside, to)
     finally:
         shutil.rmtree(aside, ignore_errors=True)
-    return Published(to, pages, sum(len(decided.traces) for decided in content.projects))
+    return Published(to, pages, sum(len(decided.traces) for one in (content, *below) for decided in one.projects))
 
 
 def _refuse_foreign(to: Path) -> None:
@@ -125,9 +140,10 @@ def _build(content: Content, folder: Path, progress: Progress) -> int:
 
 def _navigation(content: Content) -> list[dict[str, object]]:
     projects = [{d.project.title: f"projects/{d.project.id}/index.md"} for d in content.projects]
+    house = [{"House rules": "rules/house.md"}] if content.knowledge.amendments else []
     return [
         {"Projects": ["index.md", *projects]},
-        {"Rules": ["rules/index.md", {"How well guarded": "rules/guarded.md"}]},
+        {"Rules": ["rules/index.md", *house, {"How well guarded": "rules/guarded.md"}]},
         {"Steels": "steels/index.md"},
         {"Sources": "sources/index.md"},
         {"Vocabulary": "vocabulary/index.md"},
