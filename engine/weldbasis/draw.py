@@ -7,18 +7,12 @@ at which rules change over are drawn far more often than chance would, because t
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
 
 from weldbasis.facts import Facts
-from weldbasis.graph import KnowledgeGraph
-from weldbasis.kinds import Compiled
-from weldbasis.kinds.condition import Condition
-from weldbasis.kinds.gather import Gather
-from weldbasis.kinds.governing import Governing
-from weldbasis.kinds.table import Table
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.project.steels import ELEMENTS
 from weldbasis.ranges import parse_range
@@ -43,47 +37,6 @@ _OFF_GRADE = 0.3  # share of the other steels that no grade or era describes
 _MIDDLE = (0.2, 0.75)
 _ON_FIGURE = 0.35  # share of numbers that are a turning figure itself
 _NONE = (float("nan"), float("nan"))
-
-
-def turning_figures(graph: KnowledgeGraph) -> Mapping[str, Floats]:
-    """For every number the figures at which some rule changes over, within what the vocabulary allows, in order."""
-    found: dict[str, set[float]] = {}
-    quantities: dict[str, Quantity] = {}
-    for rule in graph.rules.values():
-        for quantity, figure in _figures(rule):
-            quantities[quantity.id] = quantity
-            if quantity.range.low <= figure <= quantity.range.high:
-                found.setdefault(quantity.id, set()).add(float(figure))
-    return {name: np.array(sorted(figures)) for name, figures in sorted(found.items())}
-
-
-def _figures(rule: Compiled) -> Iterator[tuple[Quantity, float]]:
-    yield from _in_condition(rule.applies)
-    yield from _in_condition(rule.valid)
-    if isinstance(rule.body, Governing):
-        for choice in rule.body.choices:
-            yield from _in_condition(choice.when)
-    if isinstance(rule.body, Gather):
-        yield from _in_condition(rule.body.where)
-    if isinstance(rule.body, Table):
-        for axis, read in zip(rule.body.axes, rule.reads, strict=False):
-            for cut in axis.cuts:
-                yield axis.quantity, (cut - read.offset) / read.factor
-        if rule.body.surface:
-            along = rule.body.surface.along
-            for curve in rule.body.surface.curves:
-                for node in curve.at:
-                    yield along.quantity, (node - along.offset) / along.factor
-
-
-def _in_condition(condition: Condition) -> Iterator[tuple[Quantity, float]]:
-    for test in condition.tests:
-        if test.quantity.is_number and not test.there:
-            for end in (test.range.low, test.range.high):
-                if np.isfinite(end):
-                    yield test.quantity, end
-    for part in condition.any_of:
-        yield from _in_condition(part)
 
 
 def random_boxes(
@@ -206,26 +159,11 @@ def _number(quantity: Quantity, figures: Floats | None, plain: Bools, rng: np.ra
     return found
 
 
-def repeated(facts: Facts, knowledge: Knowledge, joints: Ints) -> tuple[Facts, Ints]:
-    """The joints at these rows, each as often as it is named; and the member row that each new one comes from."""
-    starts = np.searchsorted(facts.joint_of, joints, side="left")
-    sizes = np.searchsorted(facts.joint_of, joints, side="right") - starts
-    offsets = np.cumsum(sizes) - sizes
-    joint_of = np.repeat(np.arange(len(joints)), sizes)
-    members: Ints = np.arange(len(joint_of)) - offsets[joint_of] + starts[joint_of]
-    given = {
-        name: column.take(joints if knowledge.quantities[name].of == "joint" else members)
-        for name, column in facts.given.items()
-    }
-    names = tuple(facts.joints[joint] for joint in joints.tolist())
-    return Facts(names, tuple(facts.members[at] for at in members.tolist()), joint_of, given), members
-
-
 def points_in(
     facts: Facts, knowledge: Knowledge, figures: Mapping[str, Floats], joints: Ints, rng: np.random.Generator
 ) -> tuple[Facts, Ints]:
     """One point inside the box of each joint named, as joints of their own; and the member rows they come from."""
-    boxes, members = repeated(facts, knowledge, joints)
+    boxes, members = facts.repeated(joints, knowledge.quantities)
     given = {name: _points(column, figures.get(name), rng) for name, column in boxes.given.items()}
     return Facts(boxes.joints, boxes.members, boxes.joint_of, given), members
 

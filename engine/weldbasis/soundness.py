@@ -11,11 +11,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from weldbasis.draw import points_in, random_boxes, turning_figures
+from weldbasis.draw import points_in, random_boxes
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
+from weldbasis.turning import turning_figures
 from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Ints, Levels, Numbers
 
 _BOXES, _EACH = 400, 50  # boxes decided at a time, and points in each
@@ -50,7 +51,7 @@ def try_points(
 ) -> Soundness:
     """Try at least so many points; the same for the same seed. `done` is told how many were tried."""
     rng = np.random.default_rng(seed)
-    figures = turning_figures(graph)
+    figures = turning_figures(graph.rules.values())
     found: dict[str, Escape] = {}
     tried: set[str] = set()
     count = boxes = 0

@@ -14,7 +14,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from weldbasis.draw import points_in, repeated, turning_figures
+from weldbasis.draw import points_in
 from weldbasis.evaluate import evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph, build_graph
@@ -22,6 +22,7 @@ from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder, site_folder
 from weldbasis.project import read_project
+from weldbasis.turning import turning_figures
 from weldbasis.values import PRESENT, Column, Floats, Numbers, chosen
 
 WANTED = ("preheat_required", "min_preheat")
@@ -64,7 +65,7 @@ def reach(
 ) -> dict[str, tuple[float, float]]:
     """Least and greatest value met at points inside one joint's box."""
     rng = np.random.default_rng(row)
-    figures = turning_figures(graph)
+    figures = turning_figures(graph.rules.values())
     each = -(-points // GENERATIONS)
     found = {name: (np.inf, -np.inf) for name in WANTED}
     best: Facts | None = None
@@ -81,7 +82,7 @@ def reach(
         order = np.argsort(_values(outcome.columns[WANTED[0]]))
         order = order[np.isfinite(_values(outcome.columns[WANTED[0]])[order])]
         if len(order):
-            best, _rows = repeated(fresh, knowledge, np.concatenate([order[:KEPT], order[-KEPT:]]))
+            best, _rows = fresh.repeated(np.concatenate([order[:KEPT], order[-KEPT:]]), knowledge.quantities)
     return found
 
 
@@ -94,7 +95,7 @@ def _children(best: Facts, fresh: Facts, knowledge: Knowledge, rng: np.random.Ge
     """Two thirds of the fresh points replaced by the best ones with a few inputs drawn anew."""
     parents = rng.integers(0, len(best.joints), len(fresh.joints))
     kept = rng.random(len(fresh.joints)) < 2 / 3
-    old, _rows = repeated(best, knowledge, parents)
+    old, _rows = best.repeated(parents, knowledge.quantities)
     given = {}
     for name, column in fresh.given.items():
         here = kept if knowledge.quantities[name].of == "joint" else kept[fresh.joint_of]
