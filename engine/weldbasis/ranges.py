@@ -10,6 +10,9 @@ _NUMBER = r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?"
 _BRACKETS = re.compile(rf"([\[(])\s*({_NUMBER}|-inf)\s*,\s*({_NUMBER}|inf)\s*([\])])")
 _COMPARISON = re.compile(rf"(<=|>=|<|>|≤|≥)\s*({_NUMBER})")
 
+# Relative. A number this near to a limit stands at it: the last bits of arithmetic decide nothing.
+ROUNDING = 1e-12
+
 
 @dataclass(frozen=True, order=True)
 class Range:
@@ -25,6 +28,16 @@ class Range:
         above = number > self.low if self.low_open else number >= self.low
         below = number < self.high if self.high_open else number <= self.high
         return above and below
+
+    @property
+    def least(self) -> float:
+        """The least number that counts as inside, or, where the lower end is open, the greatest that does not."""
+        return self.low + ROUNDING * abs(self.low) * (1 if self.low_open else -1) if self.low > -math.inf else self.low
+
+    @property
+    def most(self) -> float:
+        """The greatest number that counts as inside, or, where the upper end is open, the least that does not."""
+        return self.high + ROUNDING * abs(self.high) * (-1 if self.high_open else 1) if self.high < math.inf else self.high
 
     def __str__(self) -> str:
         if self.low == self.high:

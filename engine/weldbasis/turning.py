@@ -60,9 +60,9 @@ def _in_condition(condition: Condition) -> Iterator[tuple[Quantity, float, float
 
 def _ends(quantity: Quantity, limits: Range) -> Iterator[tuple[Quantity, float, float]]:
     if np.isfinite(limits.low):
-        yield quantity, limits.low, _next(limits.low) if limits.low_open else limits.low
+        yield quantity, limits.low, _next(limits.least) if limits.low_open else limits.least
     if np.isfinite(limits.high):
-        yield quantity, limits.high, limits.high if limits.high_open else _next(limits.high)
+        yield quantity, limits.high, limits.most if limits.high_open else _next(limits.most)
 
 
 def _in_table(rule: Compiled, table: Table) -> Iterator[tuple[Quantity, float, float]]:
@@ -71,9 +71,9 @@ def _in_table(rule: Compiled, table: Table) -> Iterator[tuple[Quantity, float, f
             figure = float((cut - read.offset) / read.factor)
             below, at, above = ([row[place][2 * number + step] for row in table.covers] for step in (0, 1, 2))
             if at != below:
-                yield axis.quantity, figure, figure
+                yield axis.quantity, figure, Range(figure, figure).least
             if at != above:
-                yield axis.quantity, figure, _next(figure)
+                yield axis.quantity, figure, _next(Range(figure, figure).most)
     if table.surface:
         along = table.surface.along
         for curve in table.surface.curves:
