@@ -38,7 +38,24 @@ def trace_joint(
     findings = tuple(dict.fromkeys(findings_of(evaluation, row, narrowings)))
     names = tuple(evaluation.facts.members[at] for at in _member_rows(evaluation, row))
     given, gave = _with_values(evaluation, row)
-    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave)
+    parts = in_parts_text(evaluation, row)
+    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave, parts)
+
+
+def in_parts_text(evaluation: Evaluation, row: int) -> str:
+    """How a joint was cut into parts to narrow its sets; empty where it was not."""
+    parts = evaluation.parts.get(row)
+    if parts is None:
+        return ""
+    members, words = _member_rows(evaluation, row), []
+    for name, number in parts.along:
+        title = evaluation.knowledge.quantities[name].title.lower()
+        words.append(f"{title} of {evaluation.facts.members[members[number - 1]]} (part {number})" if number else title)
+    return (
+        f"The ranges of this joint were narrowed: {' and '.join(words)} {'was' if len(words) == 1 else 'were'} split into "
+        f"{parts.count} parts{' together' if len(words) > 1 else ''}, where rules change over; each was worked out by "
+        "itself, and what they give together counts. Steps marked narrowed hold less than whole ranges would give."
+    )
 
 
 def _member_rows(evaluation: Evaluation, row: int) -> range:

@@ -16,10 +16,12 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
+from weldbasis.narrow import narrowed
 from weldbasis.turning import turning_figures
 from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Ints, Levels, Numbers
 
 _BOXES, _EACH = 400, 50  # boxes decided at a time, and points in each
+_NARROWED_EACH, _NARROWED = 5, 20  # every so many times, so many boxes are narrowed too, as decisions are
 _ROUNDING = 1e-9  # relative; what the last bits of the machine's arithmetic may differ by
 
 
@@ -28,6 +30,7 @@ class Escape:
     """A quantity of which some point lies outside its box's set: how many points, and one of them in words."""
 
     quantity: str
+    rule: str
     points: int
     example: str
 
@@ -54,14 +57,18 @@ def try_points(
     figures = turning_figures(graph.rules.values())
     found: dict[str, Escape] = {}
     tried: set[str] = set()
-    count = boxes = 0
+    count = boxes = turn = 0
     while count < points:
-        facts = random_boxes(knowledge, figures, min(_BOXES, -(-(points - count) // _EACH)), rng)
+        in_parts = turn % _NARROWED_EACH == 0
+        turn += 1
+        most = _NARROWED if in_parts else _BOXES
+        facts = random_boxes(knowledge, figures, min(most, -(-(points - count) // _EACH)), rng)
         sets = evaluate(knowledge, facts, graph)
+        sets = narrowed(sets) if in_parts else sets
         for escape in escapes(sets, facts, figures, _EACH, rng, tried):
             before = found.get(escape.quantity)
             more = escape.points + (before.points if before else 0)
-            found[escape.quantity] = Escape(escape.quantity, more, (before or escape).example)
+            found[escape.quantity] = Escape(escape.quantity, escape.rule, more, (before or escape).example)
         boxes += len(facts.joints)
         count += len(facts.joints) * _EACH
         done(count)
@@ -92,12 +99,12 @@ def escapes(
             if bool(out.any()):
                 row = int(np.flatnonzero(out)[0])
                 words = f"{_set(column, row)} outside {_set(sets.columns[quantity.id], int(at[row]))}"
-                yield Escape(quantity.id, int(out.sum()), words)
+                yield Escape(quantity.id, name, int(out.sum()), words)
         if name in inner.findings:
             may, surely = sets.findings[name].may[rows], sets.findings[name].surely[rows]
             out = (inner.findings[name].may & ~may) | (surely & ~inner.findings[name].surely)
             if bool(out.any()):
-                yield Escape(f"finding {name}", int(out.sum()), "raised where the box says no, or the other way")
+                yield Escape(f"finding {name}", name, int(out.sum()), "raised where the box says no, or the other way")
 
 
 def _outside(inner: Column, outer: Column) -> Bools:

@@ -17,6 +17,7 @@ from weldbasis.kinds.condition import bounds_on
 from weldbasis.kinds.table import Table, describe_cell
 from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Place, Problem
+from weldbasis.soundness import Escape
 from weldbasis.ranges import Range
 
 VetLevel = Literal["stop", "caution"]
@@ -82,6 +83,14 @@ def from_problem(problem: Problem, check: str = "reading") -> VetFinding:
     """A problem as a finding that stops work."""
     what = problem.what + (f" ({problem.why})" if problem.why else "")
     return VetFinding(problem.place, "stop", check, what, problem.do)
+
+
+def from_escape(escape: Escape, knowledge: Knowledge) -> VetFinding:
+    """A quantity whose set does not hold all its points, as a finding that stops work."""
+    rule = knowledge.rules.get(escape.rule)
+    what = f"{escape.quantity}: {escape.points} points lie outside the set of their box, such as {escape.example}"
+    place = rule.place if rule else Place("")
+    return VetFinding(place, "stop", "points", what, "this is a mistake of the engine, or a rule states a direction wrongly")
 
 
 def case_findings(cases: tuple[CaseResult, ...]) -> Iterator[VetFinding]:

@@ -21,6 +21,7 @@ from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder, site_folder
+from weldbasis.narrow import narrowed
 from weldbasis.project import read_project
 from weldbasis.turning import turning_figures
 from weldbasis.values import PRESENT, Column, Floats, Numbers, chosen
@@ -46,9 +47,12 @@ class Slack:
         return max(self.least - self.low, self.high - self.most)
 
 
-def slacks(knowledge: Knowledge, graph: KnowledgeGraph, facts: Facts, points: int = 20_000) -> list[Slack]:
-    """The slack of every joint of a project whose preheat is a range."""
-    sets = evaluate(knowledge, facts, graph, WANTED)
+def slacks(
+    knowledge: Knowledge, graph: KnowledgeGraph, facts: Facts, points: int = 20_000, narrow: bool = True
+) -> list[Slack]:
+    """The slack of every joint of a project whose preheat is a range; `narrow` cuts boxes as decisions do."""
+    sets = evaluate(knowledge, facts, graph)
+    sets = narrowed(sets) if narrow else sets
     found = []
     for row, joint in enumerate(facts.joints):
         columns = {name: sets.columns[name] for name in WANTED}

@@ -12,6 +12,7 @@ from rich.table import Table
 
 from weldbasis.cli.console import CAUTION, json_option, kb_option, progress, rules_and_project, terminal
 from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.narrow import narrowed
 from weldbasis.project import Project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes, record_from_traces, write_aside
@@ -41,7 +42,7 @@ def command(project: Path, record: Path | None, no_record: bool, kb: Path | None
     Exit code 1 when a finding stops work on a joint.
     """
     knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
-    evaluation = evaluate(knowledge, chosen.facts)
+    evaluation = narrowed(evaluate(knowledge, chosen.facts))
     traces = decide_all(evaluation)
     data = record_from_traces(chosen, evaluation, traces)
     target = record or chosen.folder / "record.json"

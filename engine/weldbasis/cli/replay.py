@@ -8,6 +8,7 @@ import click
 
 from weldbasis.cli.console import kb_option, rules_and_project
 from weldbasis.evaluate import evaluate
+from weldbasis.narrow import narrowed
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.record import read_record, record_of, replay
 from weldbasis.words import counted
@@ -46,7 +47,7 @@ def command(record: Path, folder: Path | None, kb: Path | None) -> None:
             ]
         )
     knowledge, project = rules_and_project(place, kb)
-    fresh = record_of(project, evaluate(knowledge, project.facts))
+    fresh = record_of(project, narrowed(evaluate(knowledge, project.facts)))
     found = replay(kept, fresh)
     if not found:
         joints, rules = counted(len(fresh["joints"]), "joint"), fresh["rules"]["digest"][:19]

@@ -12,6 +12,7 @@ from rich.padding import Padding
 
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
 from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.narrow import narrowed
 from weldbasis.problem import nearest
 from weldbasis.reasons import bears_on_text, trace_joint, value_text
 from weldbasis.trace import Decision, JointTrace, Ref, Step
@@ -39,7 +40,7 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
     """
     knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
     row = joint_row(chosen, joint)
-    evaluation = evaluate(knowledge, chosen.facts)
+    evaluation = narrowed(evaluate(knowledge, chosen.facts))
     trace = trace_joint(evaluation, row)
     if wanted and wanted not in knowledge.quantities:
         raise click.BadParameter(
@@ -50,6 +51,8 @@ def command(project: Path, joint: str, wanted: str | None, everything: bool, kb:
         return
     console = terminal()
     console.print(f"[bold]{trace.joint}[/bold]  {', '.join(trace.members)}")
+    if trace.in_parts:
+        console.print(_plain(trace.in_parts))
     for decision in trace.decisions:
         if wanted in (None, decision.ref.quantity) and (everything or wanted or decision.state != "uncovered"):
             _show_decision(evaluation, trace, decision, everything or wanted is not None)
@@ -74,6 +77,7 @@ def trace_data(trace: JointTrace) -> dict[str, object]:
         "decisions": [dataclasses.asdict(decision) for decision in trace.decisions],
         "findings": [dataclasses.asdict(finding) for finding in trace.findings],
         "steps": steps,
+        "in_parts": trace.in_parts,
     }
 
 
@@ -105,6 +109,7 @@ def _show_step(evaluation: Evaluation, step: Step, depth: int, full: bool) -> No
             ("rests on an assumption", step.value.assumed),
             ("unknown", step.value.unknown),
             ("safe, may be wide", step.value.wide),
+            ("narrowed", step.value.narrowed),
         )
         if on and step.state == "gave"
     ]

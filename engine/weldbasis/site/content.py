@@ -15,6 +15,7 @@ from typing import Any
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
+from weldbasis.narrow import narrowed
 from weldbasis.project import Project, read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record, record_of_joints
@@ -58,7 +59,7 @@ def decide_projects(folders: Sequence[Path], knowledge: Knowledge, progress: Pro
 
 def decide_project(project: Project, knowledge: Knowledge, graph: KnowledgeGraph, progress: Progress) -> Decided:
     """Decide one project: decisions, findings and record of every joint."""
-    evaluation = evaluate(knowledge, project.facts, graph)
+    evaluation = narrowed(evaluate(knowledge, project.facts, graph))
     count = len(project.joints)
     narrowings = settle(evaluation, range(count))
 
