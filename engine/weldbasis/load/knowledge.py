@@ -20,6 +20,7 @@ from weldbasis.load.records import (
     grade_from,
     quantity_from,
     rule_from,
+    sampling_from,
     source_from,
 )
 from weldbasis.load.references import duplicate_problem, reference_problems
@@ -28,7 +29,7 @@ from weldbasis.load.stack import Records, Stacked, put_on, stacking_problems
 from weldbasis.load.yaml_text import Document, Path_
 from weldbasis.problem import Problem, Refused, nearest
 
-_KINDS = ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
+_KINDS = ("quantities", "rules", "sources", "grades", "eras", "sampling", "consumables", "cases")
 
 
 class _Reading:
@@ -104,7 +105,10 @@ def _read(layer: Layer) -> _Reading:
             reading.add("sources", source_from, document, ())
             _named_as_file(reading, document, "source")
     for document in layer.part("steels"):
-        if reading.fits(document, "steels"):
+        if isinstance(document.data, dict) and "sampling" in document.data:
+            if reading.fits(document, "sampling"):
+                reading.add("sampling", sampling_from, document, ("sampling",))
+        elif reading.fits(document, "steels"):
             for kind, make in (("grades", grade_from), ("eras", era_from)):
                 for place in range(len(document.data.get(kind, ()))):
                     reading.add(kind, make, document, (kind, place))
@@ -205,4 +209,5 @@ def _assembled(stack: Layers, stacked: Stacked) -> Knowledge:
         amendments=stacked.amendments,
         beneath=stacked.beneath,
         frozen=stack.frozen,
+        sampling=next(iter(ordered["sampling"].values()), None),
     )
