@@ -2,15 +2,12 @@
 
 from __future__ import annotations
 
-import sys
 from pathlib import Path
 
 import numpy as np
 import pytest
 
-sys.path.insert(0, str(Path(__file__).parent / "bench"))
-
-from tightness import slacks
+from bench.tightness import slacks
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph

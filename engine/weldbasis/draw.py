@@ -39,9 +39,7 @@ _ON_FIGURE = 0.35  # share of numbers that are a turning figure itself
 _NONE = (float("nan"), float("nan"))
 
 
-def random_boxes(
-    knowledge: Knowledge, figures: Mapping[str, Floats], joints: int, rng: np.random.Generator
-) -> Facts:
+def random_boxes(knowledge: Knowledge, figures: Mapping[str, Floats], joints: int, rng: np.random.Generator) -> Facts:
     """As many joints of one to three parts and the weld metal, of which anything may be said that a project may say."""
     sizes = rng.integers(2, 5, joints)
     joint_of = np.repeat(np.arange(joints), sizes)
@@ -112,8 +110,9 @@ def _with_default(quantity: Quantity, column: Column, said: Bools, told: Bools |
     presence = np.where(said | stands, PRESENT, ABSENT).astype(np.uint8)
     flags = np.zeros(len(said), np.uint8)
     if isinstance(column, Levels):
-        usual = 0 if default == "absent" else mask_of(quantity.order if default == "unknown" else [default], quantity.order)
-        mask = np.where(said, column.mask, np.where(stands, np.uint64(usual), np.uint64(0)))
+        levels = {"absent": (), "unknown": quantity.order}.get(default, (default,))
+        usual = np.uint64(mask_of(levels, quantity.order))
+        mask = np.where(said, column.mask, np.where(stands, usual, np.uint64(0)))
         return Levels(mask.astype(np.uint64), presence, flags)
     limits = quantity.range if default in ("unknown", "absent") else parse_range(default)
     low = np.where(said, column.low, np.where(stands, limits.low, np.nan))
@@ -121,9 +120,7 @@ def _with_default(quantity: Quantity, column: Column, said: Bools, told: Bools |
     return Numbers(low, high, presence, flags)
 
 
-def _box(
-    quantity: Quantity, figures: Floats | None, doubt: Floats, plain: Bools, rng: np.random.Generator
-) -> Column:
+def _box(quantity: Quantity, figures: Floats | None, doubt: Floats, plain: Bools, rng: np.random.Generator) -> Column:
     rows = len(doubt)
     wide = rng.random(rows) < doubt
     if not quantity.is_number:
@@ -140,7 +137,8 @@ def _box(
     low, high = np.minimum(first, second), np.maximum(first, second)
     kind = rng.random(rows)
     low = np.where(~wide | (kind < 0.4), first, np.where(kind < 0.9, low, quantity.range.low))
-    high = np.where(~wide, first, np.where(kind < 0.4, np.maximum(first, near), np.where(kind < 0.9, high, quantity.range.high)))
+    high = np.where(kind < 0.4, np.maximum(first, near), np.where(kind < 0.9, high, quantity.range.high))
+    high = np.where(wide, high, first)
     presence = np.full(rows, PRESENT, np.uint8)
     return Numbers(low, high, presence, np.zeros(rows, np.uint8))
 

@@ -77,6 +77,23 @@ def narrowed(evaluation: Evaluation) -> Evaluation:
     return replace(evaluation, columns=columns, findings=findings, parts=parts)
 
 
+def in_parts_text(evaluation: Evaluation, row: int) -> str:
+    """How the joint at `row` was cut into parts, in a sentence; empty where it was not."""
+    if row not in evaluation.parts:
+        return ""
+    parts, first = evaluation.parts[row], int(evaluation.views["member"].starts[row])
+    words = []
+    for name, number in parts.along:
+        title = evaluation.knowledge.quantities[name].title.lower()
+        words.append(f"{title} of {evaluation.facts.members[first + number - 1]} (part {number})" if number else title)
+    verb, together = ("was", "") if len(words) == 1 else ("were", " together")
+    return (
+        f"The ranges of this joint were narrowed: {' and '.join(words)} {verb} split into {parts.count} parts"
+        f"{together}, where rules change over; each was worked out by itself, and what they give together counts. "
+        "Steps marked narrowed hold less than whole ranges would give."
+    )
+
+
 def _of_joint(evaluation: Evaluation, rule: str) -> bool:
     return evaluation.graph.rules[rule].rule.for_each == "joint"
 
@@ -110,7 +127,8 @@ def _cuts(evaluation: Evaluation) -> dict[int, list[_Cut]]:
 def _is_wide(column: Column) -> Bools:
     there: Bools = column.presence == PRESENT
     if isinstance(column, Levels):
-        return there & ((column.mask & (column.mask - np.uint64(1))) != 0)
+        several: Bools = there & ((column.mask & (column.mask - np.uint64(1))) != 0)
+        return several
     wide: Bools = there & (column.low < column.high)
     return wide
 
@@ -166,13 +184,15 @@ def _gain(before: Column, after: Column) -> Floats:
     """What share of each set is gone; doubt whether there is a value counts as a set of two."""
     sure: Floats = ((before.presence != after.presence) & (before.presence != ABSENT)).astype(np.float64)
     if isinstance(before, Levels) and isinstance(after, Levels):
-        return sure + (before.mask != after.mask)
+        changed: Floats = sure + (before.mask != after.mask)
+        return changed
     assert isinstance(before, Numbers)
     assert isinstance(after, Numbers)
     width = before.high - before.low
     with np.errstate(invalid="ignore", divide="ignore"):
         gone = np.where(width > 0, 1 - (after.high - after.low) / width, 0.0)
-    return sure + np.nan_to_num(gone)
+    total: Floats = sure + np.nan_to_num(gone)
+    return total
 
 
 def _evaluated(

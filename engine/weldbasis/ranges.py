@@ -32,12 +32,12 @@ class Range:
     @property
     def least(self) -> float:
         """The least number that counts as inside, or, where the lower end is open, the greatest that does not."""
-        return self.low + ROUNDING * abs(self.low) * (1 if self.low_open else -1) if self.low > -math.inf else self.low
+        return _moved(self.low, ROUNDING if self.low_open else -ROUNDING)
 
     @property
     def most(self) -> float:
         """The greatest number that counts as inside, or, where the upper end is open, the least that does not."""
-        return self.high + ROUNDING * abs(self.high) * (-1 if self.high_open else 1) if self.high < math.inf else self.high
+        return _moved(self.high, -ROUNDING if self.high_open else ROUNDING)
 
     def __str__(self) -> str:
         if self.low == self.high:
@@ -48,6 +48,10 @@ class Range:
             return f"{'>' if self.low_open else '>='} {self.low:g}"
         left, right = "(" if self.low_open else "[", ")" if self.high_open else "]"
         return f"{left}{self.low:g}, {self.high:g}{right}"
+
+
+def _moved(end: float, share: float) -> float:
+    return end + share * abs(end) if math.isfinite(end) else end
 
 
 EVERYTHING = Range(-math.inf, math.inf, True, True)

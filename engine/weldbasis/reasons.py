@@ -12,6 +12,7 @@ from weldbasis.kinds import KINDS, Compiled, View
 from weldbasis.kinds.compiled import gate
 from weldbasis.kinds.condition import failures, judge
 from weldbasis.knowledge import Quantity
+from weldbasis.narrow import in_parts_text
 from weldbasis.reading import value_of
 from weldbasis.settle import ANALYSIS, Narrowing, settle
 from weldbasis.state import demanding_end, state_of
@@ -40,22 +41,6 @@ def trace_joint(
     given, gave = _with_values(evaluation, row)
     parts = in_parts_text(evaluation, row)
     return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave, parts)
-
-
-def in_parts_text(evaluation: Evaluation, row: int) -> str:
-    """How a joint was cut into parts to narrow its sets; empty where it was not."""
-    parts = evaluation.parts.get(row)
-    if parts is None:
-        return ""
-    members, words = _member_rows(evaluation, row), []
-    for name, number in parts.along:
-        title = evaluation.knowledge.quantities[name].title.lower()
-        words.append(f"{title} of {evaluation.facts.members[members[number - 1]]} (part {number})" if number else title)
-    return (
-        f"The ranges of this joint were narrowed: {' and '.join(words)} {'was' if len(words) == 1 else 'were'} split into "
-        f"{parts.count} parts{' together' if len(words) > 1 else ''}, where rules change over; each was worked out by "
-        "itself, and what they give together counts. Steps marked narrowed hold less than whole ranges would give."
-    )
 
 
 def _member_rows(evaluation: Evaluation, row: int) -> range:

@@ -112,13 +112,15 @@ def _outside(inner: Column, outer: Column) -> Bools:
     out: Bools = (inner.presence & ~outer.presence) != 0
     there = (inner.presence & PRESENT) != 0
     if isinstance(inner, Levels) and isinstance(outer, Levels):
-        return out | (there & ((inner.mask & ~outer.mask) != 0))
+        out |= there & ((inner.mask & ~outer.mask) != 0)
+        return out
     assert isinstance(inner, Numbers)
     assert isinstance(outer, Numbers)
     slack = _ROUNDING * np.maximum(1.0, np.abs(inner.low))
     with np.errstate(invalid="ignore"):
         inside = (inner.low >= outer.low - slack) & (inner.high <= outer.high + slack)
-    return out | (there & ~inside)
+    out |= there & ~inside
+    return out
 
 
 def _set(column: Column, row: int) -> str:

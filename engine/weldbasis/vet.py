@@ -17,8 +17,8 @@ from weldbasis.kinds.condition import bounds_on
 from weldbasis.kinds.table import Table, describe_cell
 from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Place, Problem
-from weldbasis.soundness import Escape
 from weldbasis.ranges import Range
+from weldbasis.soundness import Escape
 
 VetLevel = Literal["stop", "caution"]
 _MOST_EXAMPLES = 3
@@ -90,7 +90,7 @@ def from_escape(escape: Escape, knowledge: Knowledge) -> VetFinding:
     rule = knowledge.rules.get(escape.rule)
     what = f"{escape.quantity}: {escape.points} points lie outside the set of their box, such as {escape.example}"
     place = rule.place if rule else Place("")
-    return VetFinding(place, "stop", "points", what, "this is a mistake of the engine, or a rule states a direction wrongly")
+    return VetFinding(place, "stop", "points", what, "a mistake of the engine, or of a stated direction")
 
 
 def case_findings(cases: tuple[CaseResult, ...]) -> Iterator[VetFinding]:

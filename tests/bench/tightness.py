@@ -20,8 +20,8 @@ from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
-from weldbasis.places import kb_folder, site_folder
 from weldbasis.narrow import narrowed
+from weldbasis.places import kb_folder, site_folder
 from weldbasis.project import read_project
 from weldbasis.turning import turning_figures
 from weldbasis.values import PRESENT, Column, Floats, Numbers, chosen
@@ -71,7 +71,7 @@ def reach(
     rng = np.random.default_rng(row)
     figures = turning_figures(graph.rules.values())
     each = -(-points // GENERATIONS)
-    found = {name: (np.inf, -np.inf) for name in WANTED}
+    found = dict.fromkeys(WANTED, (np.inf, -np.inf))
     best: Facts | None = None
     for _ in range(GENERATIONS):
         fresh, _rows = points_in(facts, knowledge, figures, np.full(each, row), rng)
@@ -119,7 +119,8 @@ def main(points: int) -> None:
             ends = f"slack {slack.least - slack.low:6.2f} below, {slack.high - slack.most:6.2f} above"
             print(f"  {slack.joint:5} {slack.quantity:18} {slack.low:7.2f} to {slack.high:7.2f} °C   {ends}")
             worst, joints = max(worst, slack.worst), joints + (slack.quantity == WANTED[0])
-    print(f"{joints} joints, {points:,} points each, {time.perf_counter() - start:.0f} s; greatest slack {worst:.2f} °C")
+    seconds = time.perf_counter() - start
+    print(f"{joints} joints, {points:,} points each, {seconds:.0f} s; greatest slack {worst:.2f} °C")
 
 
 if __name__ == "__main__":

@@ -61,7 +61,11 @@ def command(kb: Path | None, points: int, quiet: bool, as_json: bool) -> None:
 def _with_points(report: VetReport, knowledge: Knowledge, points: int) -> VetReport:
     """The report with what random points showed."""
     with progress("points", points) as bar:
-        found = try_points(knowledge, build_graph(knowledge), points, done=lambda n: bar.update(bar.task_ids[0], completed=n))
+
+        def done(count: int) -> None:
+            bar.update(bar.task_ids[0], completed=count)
+
+        found = try_points(knowledge, build_graph(knowledge), points, done=done)
     escaped = tuple(from_escape(escape, knowledge) for escape in found.escapes)
     counts = {**report.counts, "points": found.points, "boxes": found.boxes, "escapes": len(escaped)}
     return VetReport((*report.findings, *escaped), report.cases, counts)

@@ -105,13 +105,7 @@ def _read(layer: Layer) -> _Reading:
             reading.add("sources", source_from, document, ())
             _named_as_file(reading, document, "source")
     for document in layer.part("steels"):
-        if isinstance(document.data, dict) and "sampling" in document.data:
-            if reading.fits(document, "sampling"):
-                reading.add("sampling", sampling_from, document, ("sampling",))
-        elif reading.fits(document, "steels"):
-            for kind, make in (("grades", grade_from), ("eras", era_from)):
-                for place in range(len(document.data.get(kind, ()))):
-                    reading.add(kind, make, document, (kind, place))
+        _steels(reading, document)
     for document in layer.part("consumables"):
         _list(reading, document, "consumables", "consumables", consumable_from)
     for document in layer.part("cases"):
@@ -135,6 +129,17 @@ def _list(reading: _Reading, document: Document, kind: str, schema: str, make: M
     if reading.fits(document, schema):
         for place in range(len(document.data[kind])):
             reading.add(kind, make, document, (kind, place))
+
+
+def _steels(reading: _Reading, document: Document) -> None:
+    """Grades and eras, or the method that makes sets of samples."""
+    if isinstance(document.data, dict) and "sampling" in document.data:
+        if reading.fits(document, "sampling"):
+            reading.add("sampling", sampling_from, document, ("sampling",))
+    elif reading.fits(document, "steels"):
+        for kind, make in (("grades", grade_from), ("eras", era_from)):
+            for place in range(len(document.data.get(kind, ()))):
+                reading.add(kind, make, document, (kind, place))
 
 
 def _rules(reading: _Reading, document: Document, layer: str) -> None:

@@ -173,7 +173,7 @@ def _from_samples(steel: Steel, known: Mapping[str, Fact], vocabulary: Mapping[s
     apart = outliers(steel)
     if steel.sampling and "outlying_samples" in vocabulary and len(steel.samples) >= steel.sampling.enough:
         number = float(len({outlier.sample for outlier in apart.values()}))
-        origin = Origin("samples", outlier_text(steel, apart) or "no sample stands apart from the others", steel.place)
+        origin = Origin("samples", outlier_text(apart) or "no sample stands apart from the others", steel.place)
         found["outlying_samples"] = Fact(Range(number, number), origin)
     for element, quantity in ELEMENTS.items():
         values = [sample[element] for sample in steel.samples if element in sample]
@@ -182,9 +182,7 @@ def _from_samples(steel: Steel, known: Mapping[str, Fact], vocabulary: Mapping[s
     return found
 
 
-def _sampled(
-    steel: Steel, element: str, values: Sequence[Range], known: Fact | None, quantity: Quantity
-) -> Fact:
+def _sampled(steel: Steel, element: str, values: Sequence[Range], known: Fact | None, quantity: Quantity) -> Fact:
     envelope = Range(min(value.low for value in values), max(value.high for value in values))
     text, alone, bounds = _samples_text(len(values)), False, envelope
     method = steel.sampling
@@ -249,7 +247,7 @@ def outliers(steel: Steel) -> dict[str, Outlier]:
     return found
 
 
-def outlier_text(steel: Steel, apart: Mapping[str, Outlier]) -> str:
+def outlier_text(apart: Mapping[str, Outlier]) -> str:
     """Which samples stand apart, with which element and why; empty where none does."""
     return "; ".join(
         f"sample {outlier.sample} stands apart with {element} {outlier.value:g} %: {outlier.deviations:.2f} standard "
@@ -303,12 +301,15 @@ def _said_of(steel: Steel, facts: Mapping[str, Fact], vocabulary: Mapping[str, Q
     taken = [
         f"{element} {number_text(fact.value.high, vocabulary[quantity].decimals)} %"
         for element, quantity in ELEMENTS.items()
-        if (fact := facts.get(quantity)) and fact.origin.kind == "samples" and isinstance(fact.value, Range)
-        and any(element in sample for sample in steel.samples) and quantity not in steel.analysed
+        if (fact := facts.get(quantity))
+        and fact.origin.kind == "samples"
+        and isinstance(fact.value, Range)
+        and any(element in sample for sample in steel.samples)
+        and quantity not in steel.analysed
     ]
     if not taken:
         return ()
     these = f"these {len(steel.samples)} samples" if len(steel.samples) > 1 else "this one sample"
-    apart = outlier_text(steel, outliers(steel))
+    apart = outlier_text(outliers(steel))
     said = f"With {these} the steel is taken to hold up to {', '.join(taken)}."
     return (said, f"{apart[0].upper()}{apart[1:]}. It counts like the others.") if apart else (said,)
