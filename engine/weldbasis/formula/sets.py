@@ -52,9 +52,9 @@ def range_over(formula: Formula, lows: Mapping[str, Floats], highs: Mapping[str,
             part = at[start : start + _CHUNK]
             boxes = np.vstack([_stacked(names, lows, part), _stacked(names, highs, part)])
             # Joints of one steel share their boxes; each different box is worked once.
-            different, back = np.unique(boxes, axis=1, return_inverse=True)
+            different, back = _different(boxes)
             found = _hull(formula, different[: len(names)], different[len(names) :])
-            low[part], high[part], exact[part], defined[part] = (values[back.reshape(-1)] for values in found)
+            low[part], high[part], exact[part], defined[part] = (values[back] for values in found)
     return Ranges(low, high, exact, defined)
 
 
@@ -84,6 +84,16 @@ def _wide_and_missing(
 
 def _stacked(names: Sequence[str], values: Mapping[str, Floats], rows: Ints) -> Box:
     return np.stack([values[name][rows] for name in names])
+
+
+def _different(boxes: Box) -> tuple[Box, Ints]:
+    """The different columns of boxes, and for every column the place of its like among them."""
+    order = np.lexsort(boxes)
+    sorted_boxes = boxes[:, order]
+    fresh = np.append(True, (sorted_boxes[:, 1:] != sorted_boxes[:, :-1]).any(axis=0))
+    back = np.empty(len(order), np.intp)
+    back[order] = np.cumsum(fresh) - 1
+    return sorted_boxes[:, fresh], back
 
 
 def _hull(formula: Formula, low: Box, high: Box) -> tuple[Floats, Floats, Bools, Bools]:
