@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -11,9 +13,10 @@ from bench.tightness import slacks
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph
-from weldbasis.knowledge import Knowledge
+from weldbasis.knowledge import Knowledge, Quantity, Read, Rule
 from weldbasis.narrow import MOST_PARTS, narrowed
 from weldbasis.project import read_project
+from weldbasis.ranges import Range
 from weldbasis.reasons import trace_joint
 from weldbasis.trace import Ref
 from weldbasis.values import Levels, Numbers
@@ -89,3 +92,37 @@ def test_a_trace_says_that_it_was_narrowed(footbridge: Evaluation) -> None:
     assert trace.steps[Ref("preheat_cet_member", 2)].value.narrowed
     assert not trace.steps[Ref("preheat_cet_member", 1)].value.narrowed
     assert not before.steps[Ref("preheat_cet_member", 2)].value.narrowed
+
+
+def _rule(name: str, kind: str, reads: Mapping[str, str], body: Mapping[str, object]) -> Rule:
+    bound = tuple(Read(symbol, quantity) for symbol, quantity in reads.items())
+    return Rule(name, 1, name, kind, "joint", (name,), bound, body, "{result}", (), ())
+
+
+def _crossing() -> Knowledge:
+    """Two candidates of one input, one falling and one rising with it; the higher decides."""
+    parts: dict[str, Any] = {"title": "", "of": "joint", "says": "", "unit": "degC", "range": Range(0, 500)}
+    heat = Quantity("heat_input", "Heat input", "joint", "", unit="kJ/mm", range=Range(0, 12), given="may")
+    quantities = [heat, Quantity("falling", **parts), Quantity("rising", **parts)]
+    quantities.append(Quantity("min_preheat", decision=1, worse="higher", **parts))
+    rules = [
+        _rule("falling", "formula", {"Q": "heat_input"}, {"formula": "100 - 20*Q"}),
+        _rule("rising", "formula", {"Q": "heat_input"}, {"formula": "40 + 20*Q"}),
+        _rule("min_preheat", "governing", {}, {"take": "highest", "candidates": ["falling", "rising"]}),
+    ]
+    by_id = {q.id: q for q in quantities}
+    return Knowledge("", "", "working", by_id, {rule.id: rule for rule in rules}, {}, {}, {}, {}, ())
+
+
+def test_one_input_that_works_both_ways_is_respected() -> None:
+    """max(100 − 20 Q, 40 + 20 Q) over Q from 0 to 2.9 is 70 to 100, not 40 to 100."""
+    heat = Numbers(np.array([0.0]), np.array([2.9]), np.array([1], np.uint8), np.zeros(1, np.uint8))
+    facts = Facts(("J",), ("plate",), np.zeros(1, np.intp), {"heat_input": heat})
+    whole = evaluate(_crossing(), facts)
+    after = narrowed(whole)
+    for evaluation, low in ((whole, 42.0), (after, 70.0)):
+        column = evaluation.columns["min_preheat"]
+        assert isinstance(column, Numbers)
+        assert column.high[0] == pytest.approx(100)
+        assert low - 6 <= column.low[0] <= low
+    assert after.parts[0].along == (("heat_input", 0),)

@@ -69,6 +69,7 @@ def project_body(content: Content, decided: Decided) -> str:
         steels=steels,
         elements=used,
         composition=steel_cell,
+        sampling=decided.evaluation.knowledge.sampling,
     )
 
 
@@ -248,6 +249,7 @@ def steels_body(content: Content) -> str:
         elements=used,
         era_cell=era_cell,
         count=len(content.knowledge.grades),
+        sampling=content.knowledge.sampling,
     )
 
 
