@@ -89,8 +89,8 @@ def in_parts_text(evaluation: Evaluation, row: int) -> str:
     verb, together = ("was", "") if len(words) == 1 else ("were", " together")
     return (
         f"The ranges of this joint were narrowed: {' and '.join(words)} {verb} split into {parts.count} parts"
-        f"{together}, where rules change over or by equal steps; each was worked out by itself, and what they give together counts. "
-        "Steps marked narrowed hold less than whole ranges would give."
+        f"{together}, where rules change over or by equal steps; each was worked out by itself, and what they give "
+        "together counts. Steps marked narrowed hold less than whole ranges would give."
     )
 
 
