@@ -11,10 +11,12 @@ from weldbasis import soundness
 from weldbasis.draw import points_in, random_boxes
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
+from weldbasis.kinds import KINDS, View
+from weldbasis.kinds.condition import Condition, judge
 from weldbasis.knowledge import Knowledge
 from weldbasis.soundness import try_points
 from weldbasis.turning import first_beyond, turning_figures
-from weldbasis.values import Levels, Numbers
+from weldbasis.values import PRESENT, Levels, Numbers
 
 SLICES = range(11, 14)
 
@@ -86,11 +88,16 @@ def test_no_condition_changes_between_two_turns(knowledge: Knowledge, graph: Kno
     assert knowledge.quantities["carbon"].range.high > 0.32
 
 
-@pytest.mark.parametrize(("phosphorus", "dilution"), [(0.045, (0.2, 0.6)), (0.045, (0.1, 0.3)), (0.045, (0.15, 0.4))])
+@pytest.mark.parametrize(
+    ("phosphorus", "dilution"),
+    [(0.045, (0.2, 0.6)), (0.045, (0.1, 0.3)), (0.045, (0.15, 0.4)), (0.5, (0.2, 0.6)), (0.5, (0.15, 0.4))],
+)
 def test_a_mixture_of_equal_contents_stands_at_its_limit(
     phosphorus: float, dilution: tuple[float, float], knowledge: Knowledge, graph: KnowledgeGraph
 ) -> None:
-    """d·0.045 + (1 − d)·0.045 may come out a bit above 0.045; the limit `<= 0.045` is met all the same."""
+    """d·0.045 + (1 − d)·0.045 may come out a bit above 0.045; the limit `<= 0.045` is met all the same, and 0.5, all
+    that the vocabulary allows, is a result still.
+    """
     figures = turning_figures(graph.rules.values())
     facts = random_boxes(knowledge, figures, 1, np.random.default_rng(0))
     rows = len(facts.members)
@@ -111,4 +118,18 @@ def test_a_mixture_of_equal_contents_stands_at_its_limit(
     assert isinstance(mixed, Numbers)
     assert mixed.low[0] <= mixed.high[0]
     test = next(t for t in graph.rules["ucs"].valid.tests if t.quantity.id == "mixed_phosphorus")
-    assert mixed.high[0] <= test.range.most
+    assert mixed.presence[0] == PRESENT
+    assert mixed.high[0] == pytest.approx(phosphorus)
+    assert bool(judge(Condition((test,)), found.views["joint"]).surely[0]) == (phosphorus == 0.045)
+
+
+def test_a_mixture_of_all_that_is_allowed_has_a_result(knowledge: Knowledge, graph: KnowledgeGraph) -> None:
+    """Of 0.4 % sulphur on both sides, at every dilution, the mixture holds 0.4 %; rounding takes no result away."""
+    rule = graph.rules["mixed-sulphur"]
+    dilution = np.linspace(0.0, 1.0, 400)
+    full = np.full(400, knowledge.quantities["mixed_sulphur"].range.high)
+    columns = {"dilution": dilution, "parent_sulphur": full, "deposit_sulphur": full}
+    some, none = np.ones(400, np.uint8), np.zeros(400, np.uint8)
+    view = View(knowledge, "joint", 400, np.arange(400), {n: Numbers(c, c, some, none) for n, c in columns.items()})
+    found = KINDS["formula"].evaluate(rule, view)["mixed_sulphur"]
+    assert (found.presence == PRESENT).all()
