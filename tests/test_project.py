@@ -342,7 +342,12 @@ SAMPLES = [
         (0.1, 0.31),
         "2 samples, joined with the era's",
     ),
-    ("era: open-hearth-early, samples: [{C: 0.2}, {C: 0.18}, {C: 0.19}]", "carbon", (0.18, 0.2), "3 samples, least to"),
+    (
+        "era: open-hearth-early, samples: [{C: 0.2}, {C: 0.18}, {C: 0.19}]",
+        "carbon",
+        (0.113, 0.267),
+        "3 samples 0.18 to 0.2 %; with",
+    ),
     (
         "era: open-hearth-early, samples: [{C: 0.2, Cr: 0.02}, {C: 0.18}, {C: 0.19}]",
         "chromium",
@@ -368,6 +373,7 @@ def test_samples(
 def steel_of(knowledge: Knowledge, **said: Any) -> Steel:
     paper = Origin("project", "test")
     found: dict[str, Any] = {"grade": None, "era": None, "analysed": {}, "said": {}, "samples": ()} | said
+    found.setdefault("sampling", knowledge.sampling)
     return Steel("s", "", paper=paper, certificate="", heat="", delivery="", place="", **found)
 
 

@@ -17,12 +17,20 @@ from weldbasis.values import Column, Truth, absent_levels, absent_numbers, chose
 
 
 @dataclass(frozen=True)
+class Parts:
+    """How the box of a joint was cut: into how many parts, along which inputs (quantity and member, 0 the joint)."""
+
+    count: int
+    along: tuple[tuple[str, int], ...]
+
+
+@dataclass(frozen=True)
 class Evaluation:
     """Every quantity's column, given or worked out, and where each limit rule raises its finding.
 
     `findings` maps a rule's id to the truth of its finding over the rows of the rule's scope. `facts.given`
     tells what was given; a given value beats the rule that would have worked it out, and `overruled` keeps what
-    that rule gave.
+    that rule gave. `parts` says for which joints, by row, the sets were narrowed by cutting their box.
     """
 
     knowledge: Knowledge
@@ -33,6 +41,7 @@ class Evaluation:
     overruled: Mapping[str, Column] = field(default_factory=dict)
     # Whether every rule was worked out, not only those for some wanted quantities.
     whole: bool = True
+    parts: Mapping[int, Parts] = field(default_factory=dict)
 
     @cached_property
     def views(self) -> Mapping[Scope, View]:

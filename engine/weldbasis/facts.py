@@ -6,6 +6,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Literal
 
+import numpy as np
+
+from weldbasis.knowledge import Quantity
 from weldbasis.values import Column, Ints
 
 OriginKind = Literal[
@@ -51,3 +54,20 @@ class Facts:
     origins: Mapping[str, Ints] = field(default_factory=dict)
     origin_list: tuple[Origin, ...] = ()
     set_aside: Mapping[str, Mapping[int, Origin]] = field(default_factory=dict)
+
+    def repeated(self, rows: Ints, quantities: Mapping[str, Quantity]) -> tuple[Facts, Ints]:
+        """The joints at these rows, each as often as it is named, and the member row that each new one comes from.
+
+        Origins are left behind.
+        """
+        starts = np.searchsorted(self.joint_of, rows, side="left")
+        sizes = np.searchsorted(self.joint_of, rows, side="right") - starts
+        offsets = np.cumsum(sizes) - sizes
+        joint_of = np.repeat(np.arange(len(rows)), sizes)
+        members: Ints = np.arange(len(joint_of)) - offsets[joint_of] + starts[joint_of]
+        given = {
+            name: column.take(rows if quantities[name].of == "joint" else members)
+            for name, column in self.given.items()
+        }
+        joints = tuple(self.joints[row] for row in rows.tolist())
+        return Facts(joints, tuple(self.members[row] for row in members.tolist()), joint_of, given), members

@@ -169,9 +169,13 @@ def _project_impact(
     return ProjectImpact(project, moves, tuple(causes), together, old, new)
 
 
+# The records that a project's files are read with.
+_READ_WITH = ("quantities", "grades", "eras", "sampling", "consumables")
+
+
 def _read_alike(one: Knowledge, other: Knowledge) -> bool:
     """Whether a project's files mean the same facts under both sets."""
-    return all(getattr(one, kept) == getattr(other, kept) for kept in ("quantities", "grades", "eras", "consumables"))
+    return all(getattr(one, kept) == getattr(other, kept) for kept in _READ_WITH)
 
 
 def moves_between(old: Evaluation, new: Evaluation) -> tuple[Move, ...]:

@@ -231,6 +231,38 @@ class Era:
 
 
 @dataclass(frozen=True)
+class Sampling:
+    """How analyses of a few samples become what a steel may hold.
+
+    From `enough` values of an element on, bounds hold for the share `content` of the steel with `confidence`, by
+    tolerance `factors` (count, factor); `critical_values` (count, figure) name outliers at `significance`.
+    `last_figures` are what analyses are reported to, mass %; `centre` elements gather at mid-thickness, by a factor.
+    """
+
+    id: str
+    enough: int
+    content: float
+    confidence: float
+    factors: tuple[tuple[int, float], ...]
+    significance: float
+    critical_values: tuple[tuple[int, float], ...]
+    last_figures: Mapping[str, float]
+    centre: tuple[str, ...]
+    centre_factor: float
+    cites: tuple[Cite, ...] = ()
+    note: str = ""
+    place: Place = Place("")
+
+    def factor(self, count: int) -> float:
+        """The tolerance factor of the greatest listed count that is no more than `count`, which is the safe one."""
+        return max((n, k) for n, k in self.factors if n <= count or n == self.factors[0][0])[1]
+
+    def critical(self, count: int) -> float | None:
+        """The critical value of the outlier test, likewise; None for fewer values than are tested."""
+        return max(((n, g) for n, g in self.critical_values if n <= count), default=(0, None))[1]
+
+
+@dataclass(frozen=True)
 class Consumable:
     """A consumable classification of an open standard, without trade names."""
 
@@ -308,6 +340,7 @@ class Knowledge:
     amendments: tuple[Amendment, ...] = ()
     beneath: Mapping[tuple[str, str], Any] = field(default_factory=dict)
     frozen: str = ""
+    sampling: Sampling | None = None
 
     @cached_property
     def digest(self) -> str:
@@ -315,7 +348,8 @@ class Knowledge:
         if self.frozen:
             return self.frozen
         kinds = ("quantities", "rules", "sources", "grades", "eras", "consumables")
-        return digest_of_meaning({kind: getattr(self, kind) for kind in kinds})
+        parts = {kind: getattr(self, kind) for kind in kinds}
+        return digest_of_meaning(parts | {"sampling": {self.sampling.id: self.sampling} if self.sampling else {}})
 
     @cached_property
     def decisions(self) -> tuple[Quantity, ...]:

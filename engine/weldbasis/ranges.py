@@ -10,6 +10,9 @@ _NUMBER = r"[-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?"
 _BRACKETS = re.compile(rf"([\[(])\s*({_NUMBER}|-inf)\s*,\s*({_NUMBER}|inf)\s*([\])])")
 _COMPARISON = re.compile(rf"(<=|>=|<|>|≤|≥)\s*({_NUMBER})")
 
+# Relative. A number this near to a limit stands at it: the last bits of arithmetic decide nothing.
+ROUNDING = 1e-12
+
 
 @dataclass(frozen=True, order=True)
 class Range:
@@ -26,6 +29,16 @@ class Range:
         below = number < self.high if self.high_open else number <= self.high
         return above and below
 
+    @property
+    def least(self) -> float:
+        """The least number that counts as inside, or, where the lower end is open, the greatest that does not."""
+        return _moved(self.low, ROUNDING if self.low_open else -ROUNDING)
+
+    @property
+    def most(self) -> float:
+        """The greatest number that counts as inside, or, where the upper end is open, the least that does not."""
+        return _moved(self.high, -ROUNDING if self.high_open else ROUNDING)
+
     def __str__(self) -> str:
         if self.low == self.high:
             return f"{self.low:g}"
@@ -35,6 +48,10 @@ class Range:
             return f"{'>' if self.low_open else '>='} {self.low:g}"
         left, right = "(" if self.low_open else "[", ")" if self.high_open else "]"
         return f"{left}{self.low:g}, {self.high:g}{right}"
+
+
+def _moved(end: float, share: float) -> float:
+    return end + share * abs(end) if math.isfinite(end) else end
 
 
 EVERYTHING = Range(-math.inf, math.inf, True, True)

@@ -8,6 +8,7 @@ from weldbasis.evaluate import Evaluation
 from weldbasis.findings import findings_of
 from weldbasis.graph import quantity_node
 from weldbasis.knowledge import Quantity
+from weldbasis.narrow import in_parts_text
 from weldbasis.settle import Narrowing, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.steps import Steps, member_rows, refs_in_order
@@ -31,7 +32,8 @@ def trace_joint(
     findings = tuple(dict.fromkeys(findings_of(evaluation, row, narrowings)))
     names = tuple(evaluation.facts.members[at] for at in member_rows(evaluation, row))
     given, gave = _with_values(evaluation, row)
-    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave)
+    parts = in_parts_text(evaluation, row)
+    return JointTrace(evaluation.facts.joints[row], names, decisions, findings, steps, given, gave, parts)
 
 
 def _with_values(evaluation: Evaluation, row: int) -> tuple[tuple[Ref, ...], tuple[Ref, ...]]:

@@ -33,6 +33,7 @@ class Value:
     unknown: bool = False
     assumed: bool = False
     wide: bool = False
+    narrowed: bool = False
 
 
 @dataclass(frozen=True)
@@ -90,6 +91,7 @@ class JointTrace:
     """All reasons of one joint; `steps` in the order of the graph; `members` are the names of its parts.
 
     `given` and `gave` name the quantities that the project gave and that rules gave a value, in the same order.
+    `in_parts` says into which parts the joint was cut to narrow its sets, where it was.
     """
 
     joint: str
@@ -99,3 +101,4 @@ class JointTrace:
     steps: Mapping[Ref, Step]
     given: tuple[Ref, ...] = ()
     gave: tuple[Ref, ...] = ()
+    in_parts: str = ""

@@ -25,6 +25,8 @@ Ints: TypeAlias = NDArray[np.intp]
 PRESENT, ABSENT, MAYBE = np.uint8(1), np.uint8(2), np.uint8(3)
 # What a value rests on; the flags of all that is read are joined in what is given.
 UNKNOWN, ASSUMED, WIDE = np.uint8(1), np.uint8(2), np.uint8(4)
+# Set last of all: the set is less than its own rule makes of what it reads, because the joint was worked out in parts.
+NARROWED = np.uint8(8)
 
 
 @dataclass(frozen=True)

@@ -11,7 +11,7 @@ from weldbasis.cases import CaseResult, run_cases
 from weldbasis.graph import build_graph
 from weldbasis.house import amended_records, house_problems
 from weldbasis.knowledge import Knowledge
-from weldbasis.problem import Problem
+from weldbasis.problem import Place, Problem
 from weldbasis.proofs.domain import domain_of, never_applies
 from weldbasis.proofs.finding import VetFinding
 from weldbasis.proofs.formulas import formula_findings
@@ -20,6 +20,7 @@ from weldbasis.proofs.papers import case_findings, missing_papers, uncased_rules
 from weldbasis.proofs.reach import reach_of
 from weldbasis.proofs.tables import table_findings
 from weldbasis.proofs.unused import unused_parts
+from weldbasis.soundness import Escape
 
 
 @dataclass(frozen=True)
@@ -72,3 +73,11 @@ def from_problem(problem: Problem, check: str = "reading") -> VetFinding:
     """A problem as a finding that stops work."""
     what = problem.what + (f" ({problem.why})" if problem.why else "")
     return VetFinding(problem.place, "stop", check, what, problem.do)
+
+
+def from_escape(escape: Escape, knowledge: Knowledge) -> VetFinding:
+    """A quantity whose set does not hold all its points, as a finding that stops work."""
+    rule = knowledge.rules.get(escape.rule)
+    what = f"{escape.quantity}: {escape.points} points lie outside the set of their box, such as {escape.example}"
+    place = rule.place if rule else Place("")
+    return VetFinding(place, "stop", "points", what, "a mistake of the engine, or of a stated direction")

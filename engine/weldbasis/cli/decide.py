@@ -23,6 +23,7 @@ from weldbasis.cli.console import (
 )
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.history import keep_record
+from weldbasis.narrow import narrowed
 from weldbasis.problem import Place, nearest
 from weldbasis.project import Project
 from weldbasis.reasons import trace_joint
@@ -84,7 +85,7 @@ def command(
     if signed and not (role and name):
         raise click.UsageError("a sign-off needs --role and --name")
     knowledge, chosen = rules_and_project(project, kb, datetime.date.today())
-    evaluation = evaluate(knowledge, chosen.facts)
+    evaluation = narrowed(evaluate(knowledge, chosen.facts))
     traces = decide_all(evaluation)
     data = record_from_traces(chosen, evaluation, traces)
     target = record or chosen.folder / "record.json"

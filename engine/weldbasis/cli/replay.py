@@ -10,6 +10,7 @@ import click
 
 from weldbasis.cli.console import kb_option, rules_and_project
 from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.narrow import narrowed
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project
 from weldbasis.record import read_record, record_of, replay
@@ -51,7 +52,7 @@ def command(record: Path, folder: Path | None, kb: Path | None) -> None:
             ]
         )
     knowledge, project = rules_and_project(place, kb)
-    evaluation = evaluate(knowledge, project.facts)
+    evaluation = narrowed(evaluate(knowledge, project.facts))
     fresh = record_of(project, evaluation)
     found = replay(kept, fresh)
     if not found:

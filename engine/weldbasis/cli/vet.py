@@ -9,14 +9,17 @@ from pathlib import Path
 import click
 
 from weldbasis.cases import nature_counts
-from weldbasis.cli.console import json_option
+from weldbasis.cli.console import json_option, progress
 from weldbasis.cli.measure import look_at_directions, look_at_figures
+from weldbasis.graph import build_graph
+from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder
 from weldbasis.problem import Refused
 from weldbasis.proofs.finding import VetFinding
 from weldbasis.releases import releases_of, version_problems
-from weldbasis.vet import VetReport, from_problem, vet, with_problems
+from weldbasis.soundness import try_points
+from weldbasis.vet import VetReport, from_escape, from_problem, vet, with_problems
 from weldbasis.words import places
 
 _SCREEN = 7  # findings of three lines or so that fit a screen with the summary
@@ -24,6 +27,13 @@ _SCREEN = 7  # findings of three lines or so that fit a screen with the summary
 
 @click.command("vet")
 @click.argument("kb", type=click.Path(path_type=Path, exists=True, file_okay=False), required=False)
+@click.option(
+    "--points",
+    type=click.IntRange(min=0),
+    default=0,
+    metavar="N",
+    help="Also decide boxes of inputs drawn at random, and N points inside them: none may leave its box's set.",
+)
 @click.option("--quiet", is_flag=True, help="Only what stops work, and the summary.")
 @click.option("--figures", is_flag=True, help="Nudge every figure: does a case or a proof notice? Takes a minute.")
 @click.option(
@@ -38,7 +48,14 @@ _SCREEN = 7  # findings of three lines or so that fit a screen with the summary
 @click.option("--all", "every", is_flag=True, help="Every finding, not only the first of each sort.")
 @json_option
 def command(
-    kb: Path | None, quiet: bool, figures: bool, directions: bool, write: Path | None, every: bool, as_json: bool
+    kb: Path | None,
+    points: int,
+    quiet: bool,
+    figures: bool,
+    directions: bool,
+    write: Path | None,
+    every: bool,
+    as_json: bool,
 ) -> None:
     """Look over the rule set in the folder KB (without it: the published practice).
 
@@ -59,6 +76,8 @@ def command(
         folder = kb or kb_folder()
         knowledge = load_knowledge(folder)
         report = with_problems(vet(knowledge), version_problems(knowledge, releases_of(folder)), "versions")
+        if points:
+            report = _with_points(report, knowledge, points)
     except Refused as refused:
         report = VetReport(tuple(from_problem(problem) for problem in refused.problems), (), {})
     if as_json:
@@ -67,6 +86,19 @@ def command(
         _show(report, quiet, every)
     if report.stops:
         raise click.exceptions.Exit(1)
+
+
+def _with_points(report: VetReport, knowledge: Knowledge, points: int) -> VetReport:
+    """The report with what random points showed."""
+    with progress("points", points) as bar:
+
+        def done(count: int) -> None:
+            bar.update(bar.task_ids[0], completed=count)
+
+        found = try_points(knowledge, build_graph(knowledge), points, done=done)
+    escaped = tuple(from_escape(escape, knowledge) for escape in found.escapes)
+    counts = {**report.counts, "points": found.points, "boxes": found.boxes, "escapes": len(escaped)}
+    return VetReport((*report.findings, *escaped), report.cases, counts)
 
 
 def _show(report: VetReport, quiet: bool, every: bool) -> None:

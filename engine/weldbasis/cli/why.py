@@ -14,6 +14,7 @@ from weldbasis.against import why_not_value
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
 from weldbasis.cli.why_not import show_why_not
 from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.narrow import narrowed
 from weldbasis.problem import nearest
 from weldbasis.reasons import bears_on_text, trace_joint
 from weldbasis.sentences import value_text
@@ -62,7 +63,7 @@ def command(
         wish = read_wish(instead, knowledge) if instead else None
     except ValueError as fault:
         raise click.BadParameter(str(fault), param_hint="--not") from fault
-    evaluation = evaluate(knowledge, chosen.facts)
+    evaluation = narrowed(evaluate(knowledge, chosen.facts))
     if wish:
         show_why_not(evaluation, row, why_not_value(evaluation, row, wish), as_json)
         return
@@ -76,6 +77,8 @@ def command(
         return
     console = terminal()
     console.print(f"[bold]{trace.joint}[/bold]  {', '.join(trace.members)}")
+    if trace.in_parts:
+        console.print(_plain(trace.in_parts))
     for decision in trace.decisions:
         if wanted in (None, decision.ref.quantity) and (everything or wanted or decision.state != "uncovered"):
             _show_decision(evaluation, trace, decision, everything or wanted is not None)
@@ -100,6 +103,7 @@ def trace_data(trace: JointTrace) -> dict[str, object]:
         "decisions": [dataclasses.asdict(decision) for decision in trace.decisions],
         "findings": [dataclasses.asdict(finding) for finding in trace.findings],
         "steps": steps,
+        "in_parts": trace.in_parts,
     }
 
 
@@ -131,6 +135,7 @@ def _show_step(evaluation: Evaluation, step: Step, depth: int, full: bool) -> No
             ("rests on an assumption", step.value.assumed),
             ("unknown", step.value.unknown),
             ("safe, may be wide", step.value.wide),
+            ("narrowed", step.value.narrowed),
         )
         if on and step.state == "gave"
     ]

@@ -125,8 +125,9 @@ def _by_corners(formula: Formula, low: Box, high: Box) -> tuple[Floats, Floats, 
     at = np.flatnonzero((rising | falling).all(axis=0) & jet.defined & np.isfinite(low + high).all(axis=0))
     least, most = np.full(low.shape[1], np.nan), np.full(low.shape[1], np.nan)
     up, bottom, top = rising[:, at], low[:, at], high[:, at]
-    least[at] = at_point(formula, np.where(up, bottom, top))
-    most[at] = at_point(formula, np.where(up, top, bottom))
+    ends = at_point(formula, np.where(up, bottom, top)), at_point(formula, np.where(up, top, bottom))
+    # Where the value hardly moves, rounding may turn the two about.
+    least[at], most[at] = np.minimum(*ends), np.maximum(*ends)
     return least, most, np.isfinite(least) & np.isfinite(most), jet.defined.copy()
 
 

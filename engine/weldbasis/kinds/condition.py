@@ -95,14 +95,14 @@ def _inside(test: Test, column: Numbers | Levels) -> Truth:
     if isinstance(column, Levels):
         wanted = np.uint64(test.mask)
         return Truth((column.mask & wanted) != 0, (column.mask & ~wanted) == 0)
-    wide = test.range
-    above = column.low > wide.low if wide.low_open else column.low >= wide.low
-    below = column.high < wide.high if wide.high_open else column.high <= wide.high
+    wide, least, most = test.range, test.range.least, test.range.most
+    above = column.low > least if wide.low_open else column.low >= least
+    below = column.high < most if wide.high_open else column.high <= most
     surely = above & below
     if column.high is column.low:
         return Truth(surely, surely)
-    reaches_up = column.high > wide.low if wide.low_open else column.high >= wide.low
-    reaches_down = column.low < wide.high if wide.high_open else column.low <= wide.high
+    reaches_up = column.high > least if wide.low_open else column.high >= least
+    reaches_down = column.low < most if wide.high_open else column.low <= most
     return Truth(reaches_up & reaches_down, surely)
 
 

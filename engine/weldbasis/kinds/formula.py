@@ -21,6 +21,7 @@ from weldbasis.kinds.compiled import (
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.problem import Place, Problem, Refused
+from weldbasis.ranges import ROUNDING
 from weldbasis.values import WIDE, Column, Truth, may_be_at, numbers_where
 from weldbasis.words import range_text
 
@@ -80,8 +81,9 @@ def evaluate_formula(compiled: Compiled, view: View) -> Mapping[str, Column]:
         flags = np.where(hull.exact, flags, flags | WIDE).astype(np.uint8)
     low, high = to_vocabulary(compiled, low, high)
     allowed = compiled.gives[0].range
-    some = (low <= allowed.high) & (high >= allowed.low)
-    whole = (high <= allowed.high) & (low >= allowed.low)
+    near = ROUNDING * max(abs(allowed.low), abs(allowed.high))
+    some = (low <= allowed.high + near) & (high >= allowed.low - near)
+    whole = (high <= allowed.high + near) & (low >= allowed.low - near)
     there = Truth(there.may & some, there.surely & defined & whole)
     # What the vocabulary does not allow is no result: the rule has nothing to say there.
     if not bool(whole.all()):

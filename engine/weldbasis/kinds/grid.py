@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from weldbasis.knowledge import Quantity
-from weldbasis.ranges import EVERYTHING, Range
+from weldbasis.ranges import EVERYTHING, ROUNDING, Range
 from weldbasis.values import Bools, Column, Floats, Ints, Levels
 
 MOST_CELLS = 200_000
@@ -65,8 +65,9 @@ class Axis:
         """The segment each number lies in."""
         if not len(self.cuts):
             return np.zeros(len(points), np.intp)
-        left = np.searchsorted(self.cuts, points, side="left")
-        on_cut = self.cuts[np.minimum(left, len(self.cuts) - 1)] == points
+        near = ROUNDING * np.abs(self.cuts)
+        left = np.searchsorted(self.cuts + near, points, side="left")
+        on_cut = np.append(self.cuts - near, np.inf)[left] <= points
         segments: Ints = (2 * left + on_cut).astype(np.intp)
         return segments
 

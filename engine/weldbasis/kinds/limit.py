@@ -12,6 +12,7 @@ from weldbasis.formula import Comparison, Formula, FormulaError, parse_compariso
 from weldbasis.kinds.compiled import Compiled, Explanation, Kind, compile_common, gate, read_range, refuse
 from weldbasis.kinds.view import View
 from weldbasis.knowledge import Knowledge, Rule
+from weldbasis.ranges import ROUNDING
 from weldbasis.trace import FindingLevel
 from weldbasis.values import Column, Floats, Truth, may_be_at
 from weldbasis.words import range_text
@@ -66,9 +67,15 @@ def violated(compiled: Compiled, view: View) -> Truth:
     if comparison.sign in (">=", ">"):
         left_low, left_high, right_low, right_high = right_low, right_high, left_low, left_high
     if comparison.sign in ("<=", ">="):
-        may_fail, surely_fails = left_high > right_low, left_low > right_high
+        may_fail, surely_fails = (
+            left_high > right_low + ROUNDING * np.abs(right_low),
+            left_low > right_high + ROUNDING * np.abs(right_high),
+        )
     else:
-        may_fail, surely_fails = left_high >= right_low, left_low >= right_high
+        may_fail, surely_fails = (
+            left_high >= right_low - ROUNDING * np.abs(right_low),
+            left_low >= right_high - ROUNDING * np.abs(right_high),
+        )
     return there & Truth(may_fail, surely_fails)
 
 

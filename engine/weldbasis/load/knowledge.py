@@ -20,6 +20,7 @@ from weldbasis.load.records import (
     grade_from,
     quantity_from,
     rule_from,
+    sampling_from,
     source_from,
 )
 from weldbasis.load.references import duplicate_problem, reference_problems
@@ -28,7 +29,7 @@ from weldbasis.load.stack import Records, Stacked, put_on, stacking_problems
 from weldbasis.load.yaml_text import Document, Path_
 from weldbasis.problem import Problem, Refused, nearest
 
-_KINDS = ("quantities", "rules", "sources", "grades", "eras", "consumables", "cases")
+_KINDS = ("quantities", "rules", "sources", "grades", "eras", "sampling", "consumables", "cases")
 
 
 class _Reading:
@@ -104,10 +105,7 @@ def _read(layer: Layer) -> _Reading:
             reading.add("sources", source_from, document, ())
             _named_as_file(reading, document, "source")
     for document in layer.part("steels"):
-        if reading.fits(document, "steels"):
-            for kind, make in (("grades", grade_from), ("eras", era_from)):
-                for place in range(len(document.data.get(kind, ()))):
-                    reading.add(kind, make, document, (kind, place))
+        _steels(reading, document)
     for document in layer.part("consumables"):
         _list(reading, document, "consumables", "consumables", consumable_from)
     for document in layer.part("cases"):
@@ -131,6 +129,17 @@ def _list(reading: _Reading, document: Document, kind: str, schema: str, make: M
     if reading.fits(document, schema):
         for place in range(len(document.data[kind])):
             reading.add(kind, make, document, (kind, place))
+
+
+def _steels(reading: _Reading, document: Document) -> None:
+    """Grades and eras, or the method that makes sets of samples."""
+    if isinstance(document.data, dict) and "sampling" in document.data:
+        if reading.fits(document, "sampling"):
+            reading.add("sampling", sampling_from, document, ("sampling",))
+    elif reading.fits(document, "steels"):
+        for kind, make in (("grades", grade_from), ("eras", era_from)):
+            for place in range(len(document.data.get(kind, ()))):
+                reading.add(kind, make, document, (kind, place))
 
 
 def _rules(reading: _Reading, document: Document, layer: str) -> None:
@@ -205,4 +214,5 @@ def _assembled(stack: Layers, stacked: Stacked) -> Knowledge:
         amendments=stacked.amendments,
         beneath=stacked.beneath,
         frozen=stack.frozen,
+        sampling=next(iter(ordered["sampling"].values()), None),
     )

@@ -21,6 +21,7 @@ from weldbasis.knowledge import (
     Quantity,
     Read,
     Rule,
+    Sampling,
     Source,
 )
 from weldbasis.load.yaml_text import Document, Path_
@@ -250,6 +251,32 @@ def era_from(data: Mapping[str, Any], document: Document, path: Path_) -> Era:
         ceilings={name: float(value) for name, value in data["ceilings"].items()},
         checked=data["checked"],
         cites=cites_from(data, cites_from(document.data)),
+        note=data.get("note", ""),
+        place=document.place(*path, "id"),
+    )
+
+
+def sampling_from(data: Mapping[str, Any], document: Document, path: Path_) -> Sampling:
+    """The method that makes sets of samples."""
+    factors = tuple((entry["n"], float(entry["k"])) for entry in data["factors"])
+    critical = tuple((entry["n"], float(entry["g"])) for entry in data["outlier"]["values"])
+    for part, found in ((("factors",), factors), (("outlier", "values"), critical)):
+        if list(found) != sorted(found) or len({n for n, _ in found}) < len(found):
+            raise BadRange((*path, *part), "the counts n must rise")
+    if factors[0][0] > data["enough"]:
+        raise BadRange((*path, "factors"), f"no factor for {data['enough']} values, which are enough")
+    return Sampling(
+        id=data["id"],
+        enough=data["enough"],
+        content=data["content"],
+        confidence=data["confidence"],
+        factors=factors,
+        significance=data["outlier"]["significance"],
+        critical_values=critical,
+        last_figures={name: float(value) for name, value in data["last_figures"].items()},
+        centre=tuple(data["centre"]["elements"]),
+        centre_factor=float(data["centre"]["factor"]),
+        cites=cites_from(data),
         note=data.get("note", ""),
         place=document.place(*path, "id"),
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from weldbasis.knowledge import Consumable, Era, Grade, Knowledge, Quantity, Rule
+from weldbasis.knowledge import Consumable, Era, Grade, Knowledge, Quantity, Rule, Sampling
 from weldbasis.load.rule_references import check_value, rule_problems
 from weldbasis.problem import Place, Problem, nearest
 from weldbasis.units import is_unit
@@ -27,9 +27,10 @@ def reference_problems(knowledge: Knowledge) -> Iterator[Problem]:
                     "let each give a quantity of its own and bring them together in a governing rule",
                 )
             givers.setdefault(name, rule)
-    records: list[Grade | Era | Consumable] = [
+    records: list[Grade | Era | Sampling | Consumable] = [
         *knowledge.grades.values(),
         *knowledge.eras.values(),
+        *([knowledge.sampling] if knowledge.sampling else ()),
         *knowledge.consumables.values(),
     ]
     for record in records:

@@ -38,6 +38,8 @@ class SteelEntry:
     composition: Mapping[str, tuple[float, float]]
     samples: int
     origin: Origin
+    # What the samples come to, a sentence each: how far each element is taken, and which value stands apart.
+    said: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)

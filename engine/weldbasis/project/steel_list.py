@@ -99,6 +99,8 @@ def _steel(reading: Reading, name: str, written: Written) -> Steel:
         heat=str(said.get("origin", {}).get("heat", "")),
         delivery=delivery_in(str(said.get("grade", ""))),
         place=f"{place.file}:{place.line}",
+        sampling=reading.knowledge.sampling,
+        uncertainty={e: float(value) for e, value in said.get("sample_uncertainty", {}).items() if e in ELEMENTS},
     )
 
 

@@ -6,15 +6,17 @@ left to the vocabulary, which says what may be assumed and marks it.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 
 from weldbasis.facts import Origin
-from weldbasis.knowledge import Era, Grade, Quantity
+from weldbasis.knowledge import Era, Grade, Quantity, Sampling
 from weldbasis.project.entries import SteelEntry
 from weldbasis.project.given import Fact, standing_in, within
 from weldbasis.project.grades import limits_in, reach_of
+from weldbasis.project.samples import Outlier, outlier_of, outward, tolerance_bounds
 from weldbasis.ranges import Range
+from weldbasis.words import number_text, range_text
 
 ELEMENTS: Mapping[str, str] = {
     "C": "carbon",
@@ -40,7 +42,7 @@ _CAPPED: Mapping[str, frozenset[str]] = {
     "pcm_limit": frozenset({"C", "Si", "Mn", "Cu", "Cr", "Ni", "Mo", "V", "B"}),
     "cet_limit": frozenset({"C", "Mn", "Mo", "Cr", "Cu", "Ni"}),
 }
-# So many samples make an envelope of their own; fewer are joined with what the era or the grade allows.
+# Where the rule set has no method for samples: so many make an envelope of their own.
 _ENOUGH_SAMPLES = 3
 
 
@@ -50,6 +52,7 @@ class Steel:
 
     `analysed` holds the elements of a certificate or another whole analysis, `said` what else the project gives
     (strength, delivery, family, place of samples), both by quantity id; `samples` holds elements by symbol.
+    `sampling` is the method that makes sets of samples, `uncertainty` the laboratory's own, mass % by symbol.
     """
 
     id: str
@@ -64,6 +67,8 @@ class Steel:
     heat: str
     delivery: str
     place: str
+    sampling: Sampling | None = None
+    uncertainty: Mapping[str, float] = field(default_factory=dict)
 
 
 def member_facts(steel: Steel, thickness: Range | None, vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
@@ -160,24 +165,95 @@ def _from_era(era: Era, vocabulary: Mapping[str, Quantity], place: str) -> dict[
 
 
 def _from_samples(steel: Steel, known: Mapping[str, Fact], vocabulary: Mapping[str, Quantity]) -> dict[str, Fact]:
-    """Envelope of the samples, element by element; where they are few it is joined with what is known otherwise."""
+    """What the samples leave possible, element by element: bounds by their number, or, where they are few, their
+    envelope joined with what is known otherwise.
+    """
     count = float(len(steel.samples))
     found = {"sample_count": Fact(Range(count, count), Origin("samples", _samples_text(int(count)), steel.place))}
+    apart = outliers(steel)
+    if steel.sampling and "outlying_samples" in vocabulary and len(steel.samples) >= steel.sampling.enough:
+        number = float(len({outlier.sample for outlier in apart.values()}))
+        origin = Origin("samples", outlier_text(apart) or "no sample stands apart from the others", steel.place)
+        found["outlying_samples"] = Fact(Range(number, number), origin)
     for element, quantity in ELEMENTS.items():
         values = [sample[element] for sample in steel.samples if element in sample]
-        if not values:
-            continue
-        low, high = min(value.low for value in values), max(value.high for value in values)
-        text, alone = f"{_samples_text(len(values))}, least to greatest", False
-        if len(values) < _ENOUGH_SAMPLES:
-            other, whose = _else_known(steel, element, known.get(quantity))
-            if other:
-                low, high = min(low, other.low), max(high, other.high)
-            text = f"{_samples_text(len(values))}, {f'joined with {whose}' if other else 'too few to show a spread'}"
-            alone = other is None
-        value = within(vocabulary[quantity], Range(low, high))
-        found[quantity] = Fact(value, Origin("samples", text, steel.place), assumed=alone)
+        if values:
+            found[quantity] = _sampled(steel, element, values, known.get(quantity), vocabulary[quantity])
     return found
+
+
+def _sampled(steel: Steel, element: str, values: Sequence[Range], known: Fact | None, quantity: Quantity) -> Fact:
+    envelope = Range(min(value.low for value in values), max(value.high for value in values))
+    text, alone, bounds = _samples_text(len(values)), False, envelope
+    method = steel.sampling
+    if method and len(values) >= method.enough:
+        bounds, text = _by_statistics(steel, element, values, known, quantity, method)
+    elif len(values) >= _ENOUGH_SAMPLES:
+        text += ", least to greatest"
+    else:
+        other, whose = _else_known(steel, element, known)
+        if other:
+            bounds = Range(min(envelope.low, other.low), max(envelope.high, other.high))
+        text += f", {f'joined with {whose}' if other else 'too few to show a spread'}"
+        alone = other is None
+    if off := steel.uncertainty.get(element, 0.0):
+        bounds = Range(min(bounds.low, envelope.low - off), max(bounds.high, envelope.high + off))
+        text += f", the laboratory's ±{number_text(off, quantity.decimals + 1)} % allowed for"
+    if method and element in method.centre and "centre" in _places(steel):
+        bounds = Range(bounds.low / method.centre_factor, bounds.high)
+        text += ", less outside the middle of the plate"
+    value = within(quantity, bounds)
+    if element in (outlier := outliers(steel)):
+        text += f"; sample {outlier[element].sample} stands apart and counts"
+    return Fact(value, Origin("samples", text, steel.place), assumed=alone)
+
+
+def _by_statistics(
+    steel: Steel, element: str, values: Sequence[Range], known: Fact | None, quantity: Quantity, method: Sampling
+) -> tuple[Range, str]:
+    """Tolerance bounds with the laboratory's uncertainty, held at the era's envelope or the grade's limits unless a
+    sample lies beyond them.
+    """
+    least, most = min(value.low for value in values), max(value.high for value in values)
+    off = steel.uncertainty.get(element, 0.0)
+    bounds = tolerance_bounds(values, method.last_figures.get(element, 0.0), method)
+    found = outward(within(quantity, Range(bounds.low - off, bounds.high + off)), quantity.decimals)
+    held = ""
+    if known and not known.unknown and isinstance(known.value, Range) and known.value.high < found.high:
+        found = Range(found.low, max(known.value.high, most + off))
+        held = ", held at the era's envelope" if steel.era else ", held at the grade's limits"
+    samples = f"{_samples_text(len(values))} {range_text(least, most, quantity.decimals)} %"
+    return found, (
+        f"{samples}; with these {element} is taken up to {number_text(found.high, quantity.decimals)} %"
+        f" ({100 * method.content:g} % of the steel, {100 * method.confidence:g} % confidence{held})"
+    )
+
+
+def _places(steel: Steel) -> tuple[str, ...]:
+    """Where the samples were taken, as far as the project says it."""
+    said = steel.said.get("sample_place")
+    return said.value if said and not isinstance(said.value, Range) else ()
+
+
+def outliers(steel: Steel) -> dict[str, Outlier]:
+    """By element the value that stands apart from the other samples of the steel."""
+    if steel.sampling is None:
+        return {}
+    found = {}
+    for element in ELEMENTS:
+        values = [(at, sample[element]) for at, sample in enumerate(steel.samples, start=1) if element in sample]
+        if outlier := outlier_of(values, steel.sampling.last_figures.get(element, 0.0), steel.sampling):
+            found[element] = outlier
+    return found
+
+
+def outlier_text(apart: Mapping[str, Outlier]) -> str:
+    """Which samples stand apart, with which element and why; empty where none does."""
+    return "; ".join(
+        f"sample {outlier.sample} stands apart with {element} {outlier.value:g} %: {outlier.deviations:.2f} standard "
+        f"deviations from the mean, where more than {outlier.critical:.2f} are unlikely in one steel"
+        for element, outlier in apart.items()
+    )
 
 
 def _else_known(steel: Steel, element: str, known: Fact | None) -> tuple[Range | None, str]:
@@ -216,4 +292,24 @@ def steel_entry(steel: Steel, vocabulary: Mapping[str, Quantity]) -> SteelEntry:
         dict(sorted(composition.items())),
         len(steel.samples),
         steel.paper,
+        _said_of(steel, facts, vocabulary),
     )
+
+
+def _said_of(steel: Steel, facts: Mapping[str, Fact], vocabulary: Mapping[str, Quantity]) -> tuple[str, ...]:
+    """What a list of steels says of the samples: how far each sampled element is taken, and what stands apart."""
+    taken = [
+        f"{element} {number_text(fact.value.high, vocabulary[quantity].decimals)} %"
+        for element, quantity in ELEMENTS.items()
+        if (fact := facts.get(quantity))
+        and fact.origin.kind == "samples"
+        and isinstance(fact.value, Range)
+        and any(element in sample for sample in steel.samples)
+        and quantity not in steel.analysed
+    ]
+    if not taken:
+        return ()
+    these = f"these {len(steel.samples)} samples" if len(steel.samples) > 1 else "this one sample"
+    apart = outlier_text(outliers(steel))
+    said = f"With {these} the steel is taken to hold up to {', '.join(taken)}."
+    return (said, f"{apart[0].upper()}{apart[1:]}. It counts like the others.") if apart else (said,)

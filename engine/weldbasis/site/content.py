@@ -21,6 +21,7 @@ from weldbasis.impact import ProjectImpact, impact
 from weldbasis.knowledge import Knowledge
 from weldbasis.levers import JointLevers, levers
 from weldbasis.load.knowledge import load_knowledge
+from weldbasis.narrow import narrowed
 from weldbasis.project import Project, read_project
 from weldbasis.project.pinned import project_document, rules_folder
 from weldbasis.reasons import trace_joint
@@ -85,7 +86,7 @@ def decide_projects(folders: Sequence[Path], knowledge: Knowledge, progress: Pro
 
 def decide_project(project: Project, knowledge: Knowledge, graph: KnowledgeGraph, progress: Progress) -> Decided:
     """Decide one project: decisions, findings and record of every joint."""
-    evaluation = evaluate(knowledge, project.facts, graph)
+    evaluation = narrowed(evaluate(knowledge, project.facts, graph))
     count = len(project.joints)
     narrowings = settle(evaluation, range(count))
 

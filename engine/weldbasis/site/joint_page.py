@@ -119,7 +119,8 @@ def _who(trace: JointTrace, ref: Ref) -> str:
 def _arithmetic(knowledge: Knowledge, step: Step) -> str:
     if step.state != "gave" or not step.figures or " → " in step.figures or step.value.low is None:
         return step.figures
-    return f"{step.figures} = {value_text(knowledge.quantities[step.ref.quantity], step.value)}"
+    value = value_text(knowledge.quantities[step.ref.quantity], step.value)
+    return f"{step.figures} = {value}{' (worked out in parts)' if step.value.narrowed else ''}"
 
 
 def _inputs_sentence(knowledge: Knowledge, trace: JointTrace, inputs: list[Step], depths: dict[Ref, int]) -> Sentence:

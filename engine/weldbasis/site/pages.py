@@ -76,6 +76,7 @@ def project_body(content: Content, decided: Decided) -> str:
         steels=steels,
         elements=used,
         composition=steel_cell,
+        sampling=decided.evaluation.knowledge.sampling,
     )
 
 
@@ -256,6 +257,7 @@ def steels_body(content: Content) -> str:
         era_cell=era_cell,
         sheets=sheet_files(content.knowledge),
         count=len(content.knowledge.grades),
+        sampling=content.knowledge.sampling,
     )
 
 

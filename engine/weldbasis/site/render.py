@@ -56,6 +56,8 @@ def value_html(quantity: Quantity, value: Value) -> Markup:
         marks.append(_mark("assumed", "rests on an assumption"))
     if value.wide:
         marks.append(_mark("safe, may be wide", "the range is safe but was not proved to be exact"))
+    if value.narrowed:
+        marks.append(_mark("narrowed", "less than whole ranges would give: the joint was worked out in parts"))
     return Markup(f'<span class="wb-value">{text}</span>' + "".join(marks))
 
 
