@@ -17,6 +17,7 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import build_graph
 from weldbasis.impact import impact, moves_between
 from weldbasis.knowledge import Change, Knowledge, Rule
+from weldbasis.narrow import narrowed
 from weldbasis.places import kb_folder
 from weldbasis.project import read_project
 from weldbasis.reasons import trace_joint
@@ -54,7 +55,7 @@ def test_joints_that_move_are_those_whose_records_differ(
 ) -> None:
     for found, folder in zip(impact(knowledge, changed, examples), examples, strict=True):
         facts = read_project(folder, knowledge).facts
-        old, new = evaluate(knowledge, facts), evaluate(changed, facts)
+        old, new = narrowed(evaluate(knowledge, facts)), narrowed(evaluate(changed, facts))
         differs = set()
         for one, other in zip(records(old), records(new), strict=True):
             levels = [
@@ -72,7 +73,7 @@ def test_each_move_is_put_down_to_the_change_that_brings_it(
 ) -> None:
     for found, folder in zip(impact(knowledge, changed, examples), examples, strict=True):
         facts = read_project(folder, knowledge).facts
-        old = evaluate(knowledge, facts)
+        old = narrowed(evaluate(knowledge, facts))
         assert {cause.name for cause in found.causes} == {
             "rule preheat-cet-member", "rule heat-input", "rule interpass-window-narrow"
         }  # fmt: skip
@@ -83,7 +84,7 @@ def test_each_move_is_put_down_to_the_change_that_brings_it(
                 if name == "interpass-window-narrow"
                 else with_rules(knowledge, changed.rules[name])
             )
-            assert cause.moves == moves_between(old, evaluate(alone, facts))
+            assert cause.moves == moves_between(old, narrowed(evaluate(alone, facts)))
             if name == "interpass-window-narrow":
                 assert {move.way for move in cause.moves} <= {"looser"}
 

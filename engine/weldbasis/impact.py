@@ -17,6 +17,7 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.governors import governors
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
+from weldbasis.narrow import narrowed
 from weldbasis.problem import Refused
 from weldbasis.project import Project, read_project
 from weldbasis.reading import value_of
@@ -152,15 +153,15 @@ def _project_impact(
 ) -> ProjectImpact:
     project = read_project(folder, sets[0])
     other = project if _read_alike(*sets) else read_project(folder, sets[1])
-    old = evaluate(sets[0], project.facts, graphs[0])
-    new = evaluate(sets[1], other.facts, graphs[1])
+    base = evaluate(sets[0], project.facts, graphs[0])
+    old, new = narrowed(base), narrowed(evaluate(sets[1], other.facts, graphs[1]))
     moves = moves_between(old, new)
     causes = []
     for switch in switches:
         alike = _read_alike(sets[0], switch.knowledge)
         facts = project.facts if alike else read_project(folder, switch.knowledge).facts
         if switch.graph:
-            one = evaluate(switch.knowledge, facts, switch.graph, kept=old if alike else None)
+            one = narrowed(evaluate(switch.knowledge, facts, switch.graph, kept=base if alike else None))
             causes.append(Cause(switch.differences, moves_between(old, one)))
         else:
             causes.append(Cause(switch.differences, ()))
