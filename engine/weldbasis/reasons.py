@@ -12,13 +12,15 @@ from weldbasis.kinds import KINDS, Compiled, View
 from weldbasis.kinds.compiled import gate
 from weldbasis.kinds.condition import failures, judge
 from weldbasis.knowledge import Quantity
+from weldbasis.nearest import nearest_text
 from weldbasis.reading import value_of
-from weldbasis.settle import ANALYSIS, Narrowing, settle
+from weldbasis.settle import ANALYSIS, Narrowing, open_inputs, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Decision, Finding, JointTrace, Ref, Step, StepState, Value
 from weldbasis.values import Truth, may_be_at, surely_at
 from weldbasis.words import levels_text, range_text, with_unit
 
+_ASKING = frozenset({"recommended", "required"})
 _NAME = re.compile(r"\{(\w+)\}")
 
 
@@ -320,29 +322,42 @@ def _unsure(rule: Compiled, evaluation: Evaluation, row: int) -> str:
 def _undecided(
     evaluation: Evaluation, quantity: Quantity, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
 ) -> Iterator[Finding]:
-    if quantity.part_of:
-        return
     value = value_of(evaluation.columns[quantity.id], quantity, row)
     state = state_of(value, quantity)
     rule = evaluation.graph.giving.get(quantity.id, "")
+    if quantity.part_of:
+        if state == "uncovered" and _asks(evaluation, quantity.part_of, row):
+            text = f"{quantity.title} is asked for, and the rules give none."
+            yield Finding("hold", rule, f"{text} {nearest_text(evaluation, quantity.id, row)}")
+        return
     if state == "uncovered":
         yield Finding(
             "hold" if quantity.given == "must" else "caution",
             rule,
-            f"{quantity.title}: the rules do not cover this case.",
+            f"{quantity.title}: the rules do not cover this case. {nearest_text(evaluation, quantity.id, row)}",
         )
     if state == "open":
         text = f"{quantity.title} is open: {value_text(quantity, value)}"
         if value.presence == "maybe":
             text += ", or not covered"
-        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, row, narrowings.get((row, quantity.id), ()))}")
+        yield Finding("hold", rule, f"{text}. {settling_text(evaluation, quantity, row, narrowings)}")
 
 
-def settling_text(evaluation: Evaluation, row: int, narrowings: tuple[Narrowing, ...]) -> str:
-    """What would settle a decision, best first."""
-    if not narrowings:
-        return "No single input of the project narrows it."
-    return "To know " + "; ".join(_gain(evaluation, row, narrowing) for narrowing in narrowings[:4]) + "."
+def _asks(evaluation: Evaluation, decision: str, row: int) -> bool:
+    """Whether a decision may ask for something to be done, so that its parts have to say how."""
+    quantity = evaluation.knowledge.quantities[decision]
+    return not _ASKING.isdisjoint(value_of(evaluation.columns[decision], quantity, row).any_of)
+
+
+def settling_text(
+    evaluation: Evaluation, decision: Quantity, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
+) -> str:
+    """What would settle a decision, best first; where no input narrows it alone, the open ones it rests on."""
+    found = narrowings.get((row, decision.id), ())
+    if found:
+        return "To know " + "; ".join(_gain(evaluation, row, narrowing) for narrowing in found[:4]) + "."
+    titles = ", ".join(open_inputs(evaluation, decision, row)) or "no input that is open"
+    return f"No single input of the project narrows it; it rests on {titles}."
 
 
 def _gain(evaluation: Evaluation, row: int, narrowing: Narrowing) -> str:

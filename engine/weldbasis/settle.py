@@ -16,7 +16,7 @@ from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
 from weldbasis.state import open_rows, state_of
 from weldbasis.trace import Ref, Value
-from weldbasis.values import Column, Levels, Numbers, levels_of
+from weldbasis.values import Column, Levels, Numbers, levels_of, may_be_at
 from weldbasis.words import levels_text, range_text, with_unit
 
 _MOST_LEVELS = 12  # a category wider than this is tried as a whole family of answers too large to be useful
@@ -69,6 +69,19 @@ def settle(evaluation: Evaluation, rows: Sequence[int]) -> Mapping[tuple[int, st
                 found.setdefault((trials[at].joint, decision.id), []).append(narrowing)
         at = last
     return {key: tuple(sorted(some, key=lambda n: (not n.settles, n.share, n.ref))) for key, some in found.items()}
+
+
+def open_inputs(evaluation: Evaluation, decision: Quantity, row: int) -> tuple[str, ...]:
+    """Titles of the inputs of a decision that are given as a range or several levels for a joint or a part of it."""
+    found = []
+    for name in sorted(evaluation.graph.given_inputs(decision.id)):
+        column = evaluation.facts.given.get(name)
+        quantity = evaluation.knowledge.quantities[name]
+        rows = [row] if quantity.of == "joint" else np.flatnonzero(evaluation.facts.joint_of == row).tolist()
+        there = [] if column is None else [value_of(column, quantity, at) for at in rows if may_be_at(column, at)]
+        if any(state_of(value, quantity) == "open" for value in there):
+            found.append(quantity.title)
+    return tuple(found)
 
 
 def _open_decisions(evaluation: Evaluation, rows: Sequence[int]) -> dict[int, list[Quantity]]:
