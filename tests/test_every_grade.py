@@ -8,7 +8,7 @@ import pytest
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge, Quantity
-from weldbasis.lattice import joints_of_grade, lattice_facts
+from weldbasis.lattice import Setting, joints_of_grade, lattice_facts
 from weldbasis.nearest import nearest_gap
 from weldbasis.reasons import trace_joint
 from weldbasis.settle import open_inputs, settle
@@ -16,8 +16,8 @@ from weldbasis.state import open_rows
 from weldbasis.values import ABSENT, MAYBE, PRESENT, Bools, Levels, Numbers, mask_of
 
 THICKNESSES = (3.0, 12.0, 40.0, 90.0, 150.0)
-JOINT = {"form": "butt", "process": "136", "ambient": 15.0, "humidity": "dry", "restraint": "medium"}
-SETTINGS = (
+JOINT: Setting = {"form": "butt", "process": "136", "ambient": 15.0, "humidity": "dry", "restraint": "medium"}
+SETTINGS: tuple[Setting, ...] = (
     {"process": "111", "hydrogen": 15.0, "heat_input": 1.2},
     {"process": "121", "hydrogen": 5.0, "heat_input": 3.0},
     {"process": "141", "hydrogen": 2.0, "heat_input": 0.8},
@@ -99,8 +99,9 @@ def test_a_part_that_is_asked_for_is_given_or_said_to_be_missing(lattice: Evalua
             asked = mask_of([level for level in ASKED if level in order], order)
             for row in np.flatnonzero(((parent.mask & np.uint64(asked)) != 0) & uncovered(lattice, quantity)):
                 missing.setdefault(int(row), []).append(quantity)
-    for row, quantities in list(missing.items())[::10]:
-        texts = [finding.text for finding in trace_joint(lattice, row, {}).findings]
+    assert missing, "the lattice holds no such case any more; take another one"
+    for at, quantities in list(missing.items())[::10]:
+        texts = [finding.text for finding in trace_joint(lattice, at, {}).findings]
         for quantity in quantities:
             assert any(text.startswith(f"{quantity.title} is asked for, and the rules give none.") for text in texts)
 

@@ -18,7 +18,11 @@ from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.lattice import Setting, joints_of_grade, lattice_facts, typical_analysis
 from weldbasis.project.columns import JointRow
 from weldbasis.project.given import Fact
-from weldbasis.values import Floats, Numbers
+from weldbasis.values import Floats, Numbers, levels_of
+from weldbasis.words import levels_text
+
+
+_MEASURED = frozenset({"carbon", "manganese"})
 
 
 @dataclass(frozen=True)
@@ -85,7 +89,9 @@ class LimitLeft:
 
 
 def walk_lattice(plan: Plan, knowledge: Knowledge, graph: KnowledgeGraph) -> Lattice:
-    """Work out every method for every joint of the plan. A thickness that a grade is not made in gives no values."""
+    """Work out every method for every joint of the plan. A thickness that a grade is not made in, or at which it
+    does not limit carbon and manganese both, is no joint: nothing typical could be said of it.
+    """
     settings: list[Setting] = [dict(zip(plan.axes, point, strict=True)) for point in product(*plan.axes.values())]
     rows: list[JointRow] = []
     places: list[tuple[int, int]] = []
@@ -94,7 +100,7 @@ def walk_lattice(plan: Plan, knowledge: Knowledge, graph: KnowledgeGraph) -> Lat
         analyses: dict[float, Mapping[str, Fact]] = {}
         for place, thickness in enumerate(plan.thickness_mm):
             found = typical_analysis(knowledge, grade, thickness, plan.shares, plan.residual_share)
-            if found is not None:
+            if found is not None and _MEASURED <= found.keys():
                 analyses[thickness] = found
                 places.append((number, place))
         rows += joints_of_grade(knowledge, grade, analyses, {**plan.joint, **own}, analyses)
@@ -157,13 +163,10 @@ def widest(lattice: Lattice, steel: int) -> tuple[float, int, int, tuple[int, ..
         return None
     high, low = (np.where(np.isfinite(here), here, fill) for fill in (-np.inf, np.inf))
     apart = np.where(counts > 1, high.max(axis=0) - low.min(axis=0), -np.inf)
-    place = np.unravel_index(int(np.argmax(apart)), apart.shape)
-    return (
-        float(apart[place]),
-        int(high[(slice(None), *place)].argmax()),
-        int(low[(slice(None), *place)].argmin()),
-        tuple(int(index) for index in place),
-    )
+    place = int(np.argmax(apart))
+    indices = tuple(int(index) for index in np.unravel_index(place, apart.shape))
+    top, bottom = (int(order.reshape(-1)[place]) for order in (high.argmax(axis=0), low.argmin(axis=0)))
+    return float(apart.reshape(-1)[place]), top, bottom, indices
 
 
 def limits_left(lattice: Lattice, graph: KnowledgeGraph, method: str) -> list[LimitLeft]:
@@ -174,7 +177,7 @@ def limits_left(lattice: Lattice, graph: KnowledgeGraph, method: str) -> list[Li
         parents = view.starts if rule.rule.for_each == "member" else np.arange(view.rows)
         for test in _tests(rule):
             left = ~judge_test(test, view).may[parents]
-            limit = str(test.range) if test.quantity.is_number else "other"
+            limit = str(test.range) if test.quantity.is_number else _levels(test)
             found[test.quantity.id, limit] = LimitLeft(test.quantity, limit, float(left.mean()))
     return sorted((left for left in found.values() if left.share > 0), key=lambda left: (-left.share, left.quantity.id))
 
@@ -190,6 +193,10 @@ def _rules_behind(graph: KnowledgeGraph, quantity: str) -> list[Compiled]:
     if isinstance(rule.body, Governing):
         return [behind for choice in rule.body.choices[:1] for behind in _rules_behind(graph, choice.quantity.id)]
     return [rule]
+
+
+def _levels(test: Test) -> str:
+    return levels_text(test.quantity, levels_of(test.mask, test.quantity.order))
 
 
 def _tests(rule: Compiled) -> Sequence[Test]:

@@ -326,7 +326,7 @@ def _undecided(
     state = state_of(value, quantity)
     rule = evaluation.graph.giving.get(quantity.id, "")
     if quantity.part_of:
-        if state == "uncovered" and _asks(evaluation, quantity.part_of, row):
+        if state == "uncovered" and _to_be_done(evaluation, quantity.part_of, row):
             text = f"{quantity.title} is asked for, and the rules give none."
             yield Finding("hold", rule, f"{text} {nearest_text(evaluation, quantity.id, row)}")
         return
@@ -343,8 +343,8 @@ def _undecided(
         yield Finding("hold", rule, f"{text}. {settling_text(evaluation, quantity, row, narrowings)}")
 
 
-def _asks(evaluation: Evaluation, decision: str, row: int) -> bool:
-    """Whether a decision may ask for something to be done, so that its parts have to say how."""
+def _to_be_done(evaluation: Evaluation, decision: str, row: int) -> bool:
+    """Whether a decision may have something done, so that its parts have to say how."""
     quantity = evaluation.knowledge.quantities[decision]
     return not _ASKING.isdisjoint(value_of(evaluation.columns[decision], quantity, row).any_of)
 

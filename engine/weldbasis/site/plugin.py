@@ -19,6 +19,7 @@ from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes
 from weldbasis.site.content import Content, Decided, Progress, joints_csv
 from weldbasis.site.joint_page import joint_body
+from weldbasis.site.methods_page import methods_body
 from weldbasis.site.pages import (
     home_body,
     project_body,
@@ -73,6 +74,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         ]
         pages += [
             ("rules/index.md", "Rules", rules_body(content)),
+            ("methods/index.md", "Methods against each other", methods_body(content)),
             ("steels/index.md", "Steels", steels_body(content)),
             ("sources/index.md", "Sources", sources_body(content)),
             ("vocabulary/index.md", "Vocabulary", vocabulary_body(content)),
