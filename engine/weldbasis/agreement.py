@@ -21,7 +21,6 @@ from weldbasis.project.given import Fact
 from weldbasis.values import Floats, Numbers, levels_of
 from weldbasis.words import levels_text
 
-
 _MEASURED = frozenset({"carbon", "manganese"})
 
 
@@ -100,7 +99,7 @@ def walk_lattice(plan: Plan, knowledge: Knowledge, graph: KnowledgeGraph) -> Lat
         analyses: dict[float, Mapping[str, Fact]] = {}
         for place, thickness in enumerate(plan.thickness_mm):
             found = typical_analysis(knowledge, grade, thickness, plan.shares, plan.residual_share)
-            if found is not None and _MEASURED <= found.keys():
+            if found is not None and found.keys() >= _MEASURED:
                 analyses[thickness] = found
                 places.append((number, place))
         rows += joints_of_grade(knowledge, grade, analyses, {**plan.joint, **own}, analyses)

@@ -118,7 +118,11 @@ def _key(curves: Sequence[Curve], points: Sequence[Point], free_up_to_mm: float 
         samples.append(("", ""))
     whole_row = [("", "")] * (_KEYS_A_ROW - 1)  # published figures have long names
     if points:
-        samples += [(_ring(17, 0), f"printed in {points[0].source}"), *whole_row]
+        printed = f"printed in {' and '.join(sorted({point.source for point in points}))}"
+        samples += [
+            (_ring(17, 0), printed),
+            *whole_row,
+        ]
     if free_up_to_mm is not None:
         samples += [(_mark(17, 5), f"EN 1011-2, method A, prints no preheat up to {free_up_to_mm:g} mm"), *whole_row]
     parts = []
