@@ -1,8 +1,8 @@
 """Checks of cooling time, martensite start and hydrogen against numerical solutions and data from outside the project.
 
-Sources: Rosenthal 1946 (moving point and line source, here integrated from the instantaneous sources of
-Carslaw and Jaeger), Crank (diffusion equation by finite differences), the collection h-transport-materials (diffusivities with their
-authors and ranges of temperature), Andrews 1965 and Steven and Haynes 1956 (martensite start).
+Sources: Rosenthal 1946 (moving point and line source, integrated here from the instantaneous sources of Carslaw and
+Jaeger), Crank (diffusion equation by finite differences), the collection h-transport-materials (diffusivities with
+their authors and ranges of temperature), Andrews 1965 and Steven and Haynes 1956 (martensite start).
 """
 
 from __future__ import annotations
@@ -22,7 +22,7 @@ from weldbasis.models.diffusion import centre_share, diffusivity_mm2_s
 # Usual constants of steel between 500 and 800 °C: W/mm·K and J/mm³·K. The source moves fast, at 10 mm/s.
 CONDUCTIVITY, HEAT, SPEED = 0.029, 0.0050, 10.0
 DIFFUSIVITY = CONDUCTIVITY / HEAT
-# The rules' factors were fitted to tests, on top of the theory; this is how far the two may lie apart.
+# The rules' factors were fitted to tests and fall with preheat; up to 200 °C the two may lie so far apart.
 FACTOR = 1.6
 HYDROGEN = {
     "d0_low_cm2_s": 0.12,
@@ -84,9 +84,8 @@ def test_thin_plate_formula_lies_near_the_moving_line_source(knowledge: Knowledg
 def test_trends_are_those_of_the_moving_source(knowledge: Knowledge) -> None:
     """Doubled heat: twice the time in thick plate, four times in thin; doubled plate: a quarter. Both sides say so."""
     thick = [by_rule(knowledge, "t85-thick", Q=q, T0=100.0, F3=1.0) for q in (1.0, 2.0)]
-    thin = [
-        by_rule(knowledge, "t85-thin", Q=q, T0=100.0, d=d, F2=1.0) for q, d in ((1.0, 6.0), (2.0, 6.0), (2.0, 12.0))
-    ]
+    pairs = ((1.0, 6.0), (2.0, 6.0), (2.0, 12.0))
+    thin = [by_rule(knowledge, "t85-thin", Q=q, T0=100.0, d=d, F2=1.0) for q, d in pairs]
     assert thick[1] / thick[0] == pytest.approx(2.0, rel=1e-12)
     assert thin[1] / thin[0] == pytest.approx(4.0, rel=1e-12)
     assert thin[2] / thin[1] == pytest.approx(0.25, rel=1e-12)
@@ -100,7 +99,7 @@ def test_trends_are_those_of_the_moving_source(knowledge: Knowledge) -> None:
 
 @pytest.mark.parametrize("start", [50.0, 100.0, 150.0, 200.0, 250.0])
 def test_preheat_acts_as_in_the_moving_source(knowledge: Knowledge, start: float) -> None:
-    """Without their fitted factors, 6700 − 5 T0 and 4300 − 4.3 T0, the formulas rise with preheat as the source does."""
+    """Without their fitted factors, 6700 − 5 T0 and 4300 − 4.3 T0, the formulas rise with preheat as the source."""
     ours = by_rule(knowledge, "t85-thick", Q=1.5, T0=start, F3=1.0) / (6700 - 5 * start)
     cold = by_rule(knowledge, "t85-thick", Q=1.5, T0=20.0, F3=1.0) / (6700 - 5 * 20)
     assert ours / cold == pytest.approx(numerical_t85(1500, start, None) / numerical_t85(1500, 20, None), rel=0.01)
@@ -113,12 +112,12 @@ def test_both_martensite_start_formulas_agree_where_both_are_valid(knowledge: Kn
     """Not a check against measurements: no standard deviation of either formula could be found in a source.
 
     Two formulas fitted by different authors to different steels are held to each other. Both are linear, so that their
-    difference is greatest at a corner of the common limits: no more than 80 K over all of them, and no more than 20 K
+    difference is greatest at a corner of the common limits: no more than 45 K over all of them, and no more than 20 K
     over weldable structural steel.
     """
     both = {"C": (0.1, 0.55), "Mn": (0.2, 1.7), "Ni": (0.0, 5.0), "Cr": (0.0, 3.5), "Mo": (0.0, 1.0)}
     weldable = {"C": (0.1, 0.22), "Mn": (0.5, 1.7), "Ni": (0.0, 1.0), "Cr": (0.0, 0.8), "Mo": (0.0, 0.5)}
-    for limits, most in ((both, 80.0), (weldable, 20.0)):
+    for limits, most in ((both, 45.0), (weldable, 20.0)):
         corners = np.array(list(product(*limits.values())))
         values = {name: corners[:, place] for place, name in enumerate(limits)}
         one, other = (

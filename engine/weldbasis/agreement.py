@@ -30,6 +30,7 @@ class Plan:
 
     steels: Mapping[str, Setting]
     shares: Mapping[str, float]
+    own_shares: Mapping[str, Mapping[str, float]]
     residual_share: float
     joint: Setting
     thickness_mm: tuple[float, ...]
@@ -96,9 +97,10 @@ def walk_lattice(plan: Plan, knowledge: Knowledge, graph: KnowledgeGraph) -> Lat
     places: list[tuple[int, int]] = []
     for number, (name, own) in enumerate(plan.steels.items()):
         grade = knowledge.grades[name]
+        shares = {**plan.shares, **plan.own_shares.get(name, {})}
         analyses: dict[float, Mapping[str, Fact]] = {}
         for place, thickness in enumerate(plan.thickness_mm):
-            found = typical_analysis(knowledge, grade, thickness, plan.shares, plan.residual_share)
+            found = typical_analysis(knowledge, grade, thickness, shares, plan.residual_share)
             if found is not None and found.keys() >= _MEASURED:
                 analyses[thickness] = found
                 places.append((number, place))

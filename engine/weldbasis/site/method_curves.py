@@ -14,6 +14,7 @@ _WIDTH, _PLOT_HEIGHT, _KEY_ROW = 760.0, 300.0, 19.0
 _LEFT, _RIGHT, _TOP, _BOTTOM = 52.0, 14.0, 22.0, 40.0
 _KEYS_A_ROW = 3
 _STEP_MM, _STEP_C = 25, 50
+_DASH = 3.0
 
 
 @dataclass(frozen=True)
@@ -90,12 +91,14 @@ def _line(
 ) -> list[str]:
     """A line for every stretch of thickness over which the method gives values; a lone value is a short dash."""
     parts: list[str] = []
-    run: list[str] = []
+    run: list[tuple[float, float]] = []
     for mm, celsius in [*zip(thickness, curve.celsius, strict=True), (0.0, np.nan)]:
         if np.isfinite(celsius) and celsius <= top:
-            run.append(f"{x(mm):.1f},{y(float(celsius)):.1f}")
+            run.append((x(mm), y(float(celsius))))
         elif run:
-            parts.append(f'<polyline class="wb-method wb-method-{curve.style}" points="{" ".join(run)}"/>')
+            ends = run if len(run) > 1 else [(run[0][0] - _DASH, run[0][1]), (run[0][0] + _DASH, run[0][1])]
+            places = " ".join(f"{across:.1f},{down:.1f}" for across, down in ends)
+            parts.append(f'<polyline class="wb-method wb-method-{curve.style}" points="{places}"/>')
             run = []
     return parts
 

@@ -79,6 +79,7 @@ def methods_body(content: Content) -> str:
     return page(
         "methods.html",
         names=names,
+        own_shares=_own_shares(content, lattice.plan),
         plan=lattice.plan,
         data=data,
         count=len(lattice.evaluation.facts.joints),
@@ -104,6 +105,7 @@ def plan_of(data: Mapping[str, Any]) -> Plan:
     return Plan(
         steels,
         analysis["shares"],
+        {steel["grade"]: steel["shares"] for steel in data["steels"] if "shares" in steel},
         float(analysis["residual_share"]),
         data["joint"],
         tuple(float(thickness) for thickness in data["thickness"]),
@@ -111,6 +113,16 @@ def plan_of(data: Mapping[str, Any]) -> Plan:
         tuple(method["quantity"] for method in data["methods"]),
         float(data["agree_within"]),
     )
+
+
+def _own_shares(content: Content, plan: Plan) -> list[tuple[str, str, float]]:
+    """Steel, element and share, wherever a steel has a share of its own."""
+    grades = content.knowledge.grades
+    return [
+        (grades[name].designation, element, share)
+        for name, shares in plan.own_shares.items()
+        for element, share in shares.items()
+    ]
 
 
 def _method(content: Content, lattice: Lattice, number: int) -> MethodRow:
