@@ -63,7 +63,7 @@ def test_every_grade_and_envelope_has_a_sheet_that_leaves_nothing_silent(sheets:
             assert len(line.preheat) == len(sheets.conditions["hydrogen"])
         if any(value.presence == "absent" for line in made for value in line.preheat):
             assert found.gaps, found.steel.id
-            assert all(gap.startswith("Nearest comes ") for gap in found.gaps)
+            assert all(gap.startswith("The nearest rule is ") for gap in found.gaps)
 
 
 def test_more_hydrogen_and_restraint_never_ask_for_less(sheets: Sheets) -> None:

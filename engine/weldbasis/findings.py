@@ -7,17 +7,18 @@ from collections.abc import Iterator, Mapping
 from weldbasis.evaluate import Evaluation
 from weldbasis.kinds import Compiled
 from weldbasis.knowledge import Quantity
+from weldbasis.nearest import nearest_text
 from weldbasis.reading import value_of
 from weldbasis.sentences import outcome_text, say, value_text, why_not
-from weldbasis.settle import ANALYSIS, Narrowing
+from weldbasis.settle import ANALYSIS, Narrowing, open_inputs
 from weldbasis.state import demanding_end, state_of
-from weldbasis.steps import Steps, member_rows, origin_at
+from weldbasis.steps import member_rows, origin_at
 from weldbasis.trace import Finding, Ref, Value
-from weldbasis.uncovered import nearest_text
 from weldbasis.values import may_be_at
 from weldbasis.words import levels_text, number_text, with_unit
 
 _WITH_CASES, _MOST_CASES = 2, 4
+_ASKING = frozenset({"recommended", "required"})
 
 
 def findings_of(
@@ -75,13 +76,16 @@ def _unsure(rule: Compiled, evaluation: Evaluation, row: int) -> str:
 def _undecided(
     evaluation: Evaluation, quantity: Quantity, row: int, narrowings: Mapping[tuple[int, str], tuple[Narrowing, ...]]
 ) -> Iterator[Finding]:
-    if quantity.part_of:
-        return
     value = value_of(evaluation.columns[quantity.id], quantity, row)
     state = state_of(value, quantity)
     rule = evaluation.graph.giving.get(quantity.id, "")
+    if quantity.part_of:
+        if state == "uncovered" and _to_be_done(evaluation, quantity.part_of, row):
+            text = f"{quantity.title} is asked for, and the rules give none."
+            yield Finding("hold", rule, f"{text} {nearest_text(evaluation, quantity.id, row)}")
+        return
     if state == "uncovered":
-        near = nearest_text(Steps(evaluation, row), Ref(quantity.id), evaluation.knowledge)
+        near = nearest_text(evaluation, quantity.id, row)
         yield Finding(
             "hold" if quantity.given == "must" else "caution",
             rule,
@@ -96,10 +100,17 @@ def _undecided(
         )
 
 
+def _to_be_done(evaluation: Evaluation, decision: str, row: int) -> bool:
+    """Whether a decision may have something done, so that its parts have to say how."""
+    quantity = evaluation.knowledge.quantities[decision]
+    return not _ASKING.isdisjoint(value_of(evaluation.columns[decision], quantity, row).any_of)
+
+
 def settling_text(evaluation: Evaluation, row: int, quantity: Quantity, narrowings: tuple[Narrowing, ...]) -> str:
     """What would settle a decision, best first; the best two with where the decision turns."""
     if not narrowings:
-        return "No input of the project narrows it, alone or with another."
+        titles = ", ".join(open_inputs(evaluation, quantity, row)) or "no input that is open"
+        return f"No input of the project narrows it, alone or with another; it rests on {titles}."
     gains = [_gain(evaluation, row, quantity, n, place < _WITH_CASES) for place, n in enumerate(narrowings[:4])]
     return "To know " + "; ".join(gains) + "."
 

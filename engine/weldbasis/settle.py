@@ -10,6 +10,8 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import combinations, product
 
+import numpy as np
+
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
 from weldbasis.narrowing import ANALYSIS, Case, Narrowing, left_in_words, share_left
@@ -17,10 +19,20 @@ from weldbasis.reading import value_of
 from weldbasis.state import open_rows, state_of
 from weldbasis.trace import Ref, Value
 from weldbasis.trials import Pin, Trial, alike, demands_of, member_rows, outcomes
-from weldbasis.values import Column, Numbers, levels_of
+from weldbasis.values import Column, Numbers, levels_of, may_be_at
 from weldbasis.walks import Asked, Walk, not_harder, steps_between
 
-__all__ = ["ANALYSIS", "Case", "Narrowing", "Question", "open_decisions", "questions_of", "settle", "steels_of"]
+__all__ = [
+    "ANALYSIS",
+    "Case",
+    "Narrowing",
+    "Question",
+    "open_decisions",
+    "open_inputs",
+    "questions_of",
+    "settle",
+    "steels_of",
+]
 
 _MOST_LEVELS = 12  # a category wider than this is tried as a whole family of answers too large to be useful
 _FEWEST_ELEMENTS = 2  # an analysis that would tell one element only is that element itself
@@ -67,6 +79,19 @@ def settle(evaluation: Evaluation, rows: Sequence[int]) -> Found:
 
 def _best_first(narrowing: Narrowing) -> tuple[bool, float, int, tuple[Ref, ...]]:
     return (not narrowing.settles, narrowing.share, len(narrowing.refs), narrowing.refs)
+
+
+def open_inputs(evaluation: Evaluation, decision: Quantity, row: int) -> tuple[str, ...]:
+    """Titles of the inputs of a decision that are given as a range or several levels for a joint or a part of it."""
+    found = []
+    for name in sorted(evaluation.graph.given_inputs(decision.id)):
+        column = evaluation.facts.given.get(name)
+        quantity = evaluation.knowledge.quantities[name]
+        rows = [row] if quantity.of == "joint" else np.flatnonzero(evaluation.facts.joint_of == row).tolist()
+        there = [] if column is None else [value_of(column, quantity, at) for at in rows if may_be_at(column, at)]
+        if any(state_of(value, quantity) == "open" for value in there):
+            found.append(quantity.title)
+    return tuple(found)
 
 
 def open_decisions(evaluation: Evaluation, rows: Sequence[int]) -> dict[int, list[Quantity]]:

@@ -15,13 +15,12 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Era, Grade, Knowledge
 from weldbasis.lattice import Lattice, lattice, steel_of_era, steel_of_grade
+from weldbasis.nearest import nearest_text
 from weldbasis.project.grades import limits_in, reach_of
 from weldbasis.ranges import Range
 from weldbasis.reading import value_of
 from weldbasis.state import demanding_end
-from weldbasis.steps import Steps
-from weldbasis.trace import Ref, Value
-from weldbasis.uncovered import nearest_text
+from weldbasis.trace import Value
 
 PREHEAT = "min_preheat"
 # What a sheet says beside the preheat, one column each.
@@ -127,7 +126,7 @@ def _gaps(sheets: Sheets, rows: Sequence[int], line: Line) -> list[str]:
     row = next((row for row, value in zip(rows, line.preheat, strict=True) if value.presence == "absent"), None)
     if row is None:
         return []
-    text = nearest_text(Steps(sheets.evaluation, row), Ref(PREHEAT), sheets.evaluation.knowledge)
+    text = nearest_text(sheets.evaluation, PREHEAT, row)
     return [text] if text else []
 
 

@@ -117,7 +117,7 @@ def bounds_on(condition: Condition, quantity: str) -> Range:
 
 def failures(condition: Condition, view: View, row: int) -> tuple[str, ...]:
     """For one row, a sentence for every demand that surely or possibly fails: the limit left, and by how much."""
-    found = [_failure(test, view, row) for test in condition.tests]
+    found = [failure(test, view, row) for test in condition.tests]
     if condition.any_of:
         truth = view.once(("any of", id(condition)), lambda: judge(Condition(any_of=condition.any_of), view))
         if not bool(truth.surely[row]):
@@ -126,7 +126,8 @@ def failures(condition: Condition, view: View, row: int) -> tuple[str, ...]:
     return tuple(text for text in found if text)
 
 
-def _failure(test: Test, view: View, row: int) -> str:
+def failure(test: Test, view: View, row: int) -> str:
+    """For one row, how a demand surely or possibly fails; empty where it surely holds."""
     truth = view.once(("test", id(test)), lambda: judge_test(test, view))
     if bool(truth.surely[row]):
         return ""

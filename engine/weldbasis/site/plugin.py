@@ -22,6 +22,7 @@ from weldbasis.site.guard_page import guard_body
 from weldbasis.site.house_page import house_body, impact_body
 from weldbasis.site.joint_page import joint_body
 from weldbasis.site.levers_section import levers_html
+from weldbasis.site.methods_page import methods_body
 from weldbasis.site.open_points_page import open_points_body
 from weldbasis.site.pages import (
     home_body,
@@ -93,6 +94,7 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
         pages += [
             ("rules/index.md", "Rules", rules_body(content)),
             ("rules/guarded.md", "How well guarded", guard_body(content.knowledge)),
+            ("methods/index.md", "Methods against each other", methods_body(content)),
             ("steels/index.md", "Steels", steels_body(content)),
             ("sources/index.md", "Sources", sources_body(content)),
             ("vocabulary/index.md", "Vocabulary", vocabulary_body(content)),

@@ -144,6 +144,7 @@ def _navigation(content: Content) -> list[dict[str, object]]:
     return [
         {"Projects": ["index.md", *projects]},
         {"Rules": ["rules/index.md", *house, {"How well guarded": "rules/guarded.md"}]},
+        {"Methods": "methods/index.md"},
         {"Steels": "steels/index.md"},
         {"Sources": "sources/index.md"},
         {"Vocabulary": "vocabulary/index.md"},
