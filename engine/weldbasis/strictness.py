@@ -6,6 +6,7 @@ conditions are compared exactly, since nothing changes between two cuts; else po
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from itertools import pairwise
@@ -31,6 +32,7 @@ Pool: TypeAlias = Mapping[str, Floats]
 _MOST_POINTS = 200_000
 _INNER = (0.25, 0.5, 0.75)  # shares of the domain looked at beside the bounds, for formulas
 _SEED = 1
+_CONSTANT = re.compile(r"(?<![\w.])\d+\.?\d*")
 _MEMBERS = 2  # parts of a joint where members are gathered
 
 
@@ -111,8 +113,10 @@ def _conditions(rule: Compiled) -> Iterator[Condition]:
 
 
 def _cell_ends(rule: Compiled, quantity: Quantity) -> Iterator[float]:
-    """The ends of a table's ranges in the vocabulary's unit."""
+    """The ends of a table's ranges, and the constants that a check compares with, in the vocabulary's unit."""
     reads = {read.name: read for read in rule.reads if read.quantity.id == quantity.id}
+    for constant in map(float, _CONSTANT.findall(str(rule.rule.body.get("must_hold", "")))):
+        yield from ((constant - read.offset) / read.factor for read in reads.values())
     for row in rule.rule.body.get("rows", ()):
         for name, wanted in row.get("when", {}).items():
             if name in reads and wanted not in ("present", "absent"):
