@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from weldbasis.evaluate import Evaluation
-from weldbasis.trials import Pin, Trial, decided_again, member_rows, pin_to
+from weldbasis.settling.trials import Pin, Trial, decided_again, member_rows, pin_to
 
 
 def drawn_joints(evaluations: tuple[Evaluation, ...], seed: int, count: int = 4) -> Evaluation:

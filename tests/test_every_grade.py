@@ -10,9 +10,9 @@ from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.nearest import nearest_gap
 from weldbasis.reasons import trace_joint
-from weldbasis.settle import open_inputs, settle
+from weldbasis.settling.settle import open_inputs, settle
 from weldbasis.state import open_rows
-from weldbasis.typical import Setting, joints_of_grade, lattice_facts
+from weldbasis.survey.typical import Setting, joints_of_grade, lattice_facts
 from weldbasis.values import ABSENT, MAYBE, PRESENT, Bools, Levels, Numbers, mask_of
 
 THICKNESSES = (3.0, 12.0, 40.0, 90.0, 150.0)

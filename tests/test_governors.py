@@ -6,8 +6,8 @@ from pathlib import Path
 
 import numpy as np
 
+from weldbasis.authority.governors import governors
 from weldbasis.evaluate import evaluate
-from weldbasis.governors import governors
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
 from weldbasis.project import read_project

@@ -10,14 +10,14 @@ from typing import Any
 import pytest
 
 from weldbasis.cases import run_cases
-from weldbasis.directions import audit
-from weldbasis.figures import figures_of, nudged, nudges
 from weldbasis.graph import KnowledgeGraph, build_graph
-from weldbasis.guard import guard, summary
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.yaml_text import read_yaml
 from weldbasis.meaning import meaning_of
 from weldbasis.places import site_folder
+from weldbasis.survey.directions import audit
+from weldbasis.survey.figures import figures_of, nudged, nudges
+from weldbasis.survey.guard import guard, summary
 
 MEASURED = site_folder() / "measured"
 

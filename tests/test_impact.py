@@ -12,17 +12,17 @@ from pathlib import Path
 
 import pytest
 
-from weldbasis.changes import differences_between
+from weldbasis.authority.changes import differences_between
+from weldbasis.authority.impact import impact, moves_between
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import build_graph
-from weldbasis.impact import impact, moves_between
 from weldbasis.knowledge import Change, Knowledge, Rule
 from weldbasis.narrow import narrowed
 from weldbasis.places import kb_folder
 from weldbasis.project import read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record
-from weldbasis.settle import settle
+from weldbasis.settling.settle import settle
 
 
 def with_rules(knowledge: Knowledge, *rules: Rule, without: tuple[str, ...] = ()) -> Knowledge:

@@ -11,18 +11,18 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from joints import drawn_joints
-from weldbasis.edges import edges
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
-from weldbasis.levers import Change, JointLevers, holds_of, levers, settings_of
 from weldbasis.project import read_project
 from weldbasis.reading import value_of
+from weldbasis.settling.edges import edges
+from weldbasis.settling.levers import Change, JointLevers, holds_of, levers, settings_of
+from weldbasis.settling.trials import Pin, Trial, demands_of, outcomes, pin_to
+from weldbasis.settling.walks import steps_between
+from weldbasis.settling.wishes import cheapest, decision_named, meets, read_wish, trial_of
 from weldbasis.state import demand_of
 from weldbasis.trace import Ref
-from weldbasis.trials import Pin, Trial, demands_of, outcomes, pin_to
-from weldbasis.walks import steps_between
-from weldbasis.wishes import cheapest, decision_named, meets, read_wish, trial_of
 
 
 @pytest.fixture(scope="module")

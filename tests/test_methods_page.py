@@ -8,7 +8,6 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from weldbasis.agreement import Lattice, compare, effect, limits_left, share_inside, spreads, walk_lattice, widest
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.yaml_text import read_yaml
@@ -18,7 +17,17 @@ from weldbasis.ranges import Range
 from weldbasis.site.content import Content
 from weldbasis.site.method_curves import Curve, Point, method_curves
 from weldbasis.site.methods_page import methods_body, plan_of, printed_points
-from weldbasis.typical import typical_analysis
+from weldbasis.survey.agreement import (
+    Lattice,
+    compare,
+    effect,
+    limits_left,
+    share_inside,
+    spreads,
+    walk_lattice,
+    widest,
+)
+from weldbasis.survey.typical import typical_analysis
 from weldbasis.values import Numbers
 
 DATA = read_yaml(Path(site_folder()) / "measured" / "methods.yaml").data

@@ -14,7 +14,7 @@ from weldbasis.load.schema import validator
 from weldbasis.project import Project, read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes, read_record, record_of, replay, write_aside
-from weldbasis.settle import settle
+from weldbasis.settling.settle import settle
 from weldbasis.trace import Ref
 
 

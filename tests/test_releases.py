@@ -11,8 +11,9 @@ from cryptography.hazmat.primitives.asymmetric.ed25519 import Ed25519PrivateKey,
 from cryptography.hazmat.primitives.serialization import Encoding, NoEncryption, PrivateFormat, PublicFormat
 
 from house_folder import change, make_house
+from weldbasis.authority.changes import differences_between
+from weldbasis.authority.releases import knowledge_of_release, news, release_data, releases_of, version_problems
 from weldbasis.cases import run_cases
-from weldbasis.changes import differences_between
 from weldbasis.evaluate import evaluate
 from weldbasis.graph import build_graph
 from weldbasis.knowledge import Knowledge
@@ -24,7 +25,6 @@ from weldbasis.places import kb_folder, site_folder
 from weldbasis.problem import Refused
 from weldbasis.project import read_project
 from weldbasis.record import canonical_bytes, record_of
-from weldbasis.releases import knowledge_of_release, news, release_data, releases_of, version_problems
 
 TABLE = "rules/preheat/min-preheat.yaml"
 

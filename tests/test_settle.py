@@ -14,15 +14,15 @@ from joints import drawn_joints
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
-from weldbasis.narrowing import ANALYSIS, Narrowing
 from weldbasis.project import read_project
 from weldbasis.reading import value_of
-from weldbasis.sampling import Plan, plan_samples
-from weldbasis.settle import open_analyses, open_decisions, settle, steels_of
+from weldbasis.settling.narrowing import ANALYSIS, Narrowing
+from weldbasis.settling.sampling import Plan, plan_samples
+from weldbasis.settling.settle import open_analyses, open_decisions, settle, steels_of
+from weldbasis.settling.trials import Pin, Trial, alike, decided_again, demands_of, member_rows, outcomes, pin_to
+from weldbasis.settling.walks import steps_between
 from weldbasis.state import demand_of, open_rows
 from weldbasis.trace import Ref
-from weldbasis.trials import Pin, Trial, alike, decided_again, demands_of, member_rows, outcomes, pin_to
-from weldbasis.walks import steps_between
 
 
 @pytest.fixture(scope="module")

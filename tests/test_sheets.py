@@ -15,9 +15,9 @@ from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Grade, Knowledge
 from weldbasis.project import read_project
 from weldbasis.reading import value_of
-from weldbasis.sheets import BESIDE, PREHEAT, Sheets, decide_sheets, sheet
 from weldbasis.site.sheet_page import cell_html, conditions, sheet_body
 from weldbasis.state import demanding_end
+from weldbasis.survey.sheets import BESIDE, PREHEAT, Sheets, decide_sheets, sheet
 from weldbasis.trace import Value
 from weldbasis.values import Numbers
 

@@ -9,14 +9,22 @@ from typing import Any
 import pytest
 from cryptography.hazmat.primitives.asymmetric.ed25519 import Ed25519PrivateKey
 
+from weldbasis.authority.history import given_in, history_of, keep_record, kept_records
+from weldbasis.authority.sign_offs import (
+    SIGN_OFFS,
+    SignOff,
+    Standing,
+    add_sign_off,
+    read_sign_offs,
+    signed_part,
+    standing_of,
+)
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
-from weldbasis.history import given_in, history_of, keep_record, kept_records
 from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Place, Refused
 from weldbasis.project import read_project
 from weldbasis.record import digest_of, record_of
-from weldbasis.sign_offs import SIGN_OFFS, SignOff, Standing, add_sign_off, read_sign_offs, signed_part, standing_of
 
 BASE = """project: test
 title: Test

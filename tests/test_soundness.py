@@ -7,14 +7,14 @@ import dataclasses
 import numpy as np
 import pytest
 
-from weldbasis import soundness
-from weldbasis.draw import points_in, random_boxes
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.kinds import KINDS, View
 from weldbasis.kinds.condition import Condition, judge
 from weldbasis.knowledge import Knowledge
-from weldbasis.soundness import try_points
+from weldbasis.survey import soundness
+from weldbasis.survey.draw import points_in, random_boxes
+from weldbasis.survey.soundness import try_points
 from weldbasis.turning import first_beyond, turning_figures
 from weldbasis.values import PRESENT, Levels, Numbers
 

@@ -11,10 +11,10 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from house_folder import SMALL, change, make_house
-from weldbasis.house import amended_records, house_problems
+from weldbasis.authority.house import amended_records, house_problems
+from weldbasis.authority.strictness import strictness_of
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.load.knowledge import load_knowledge
-from weldbasis.strictness import strictness_of
 
 
 @pytest.fixture(scope="module")

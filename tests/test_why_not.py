@@ -8,13 +8,13 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from weldbasis.against import why_not_value
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
 from weldbasis.project import read_project
 from weldbasis.reasons import trace_joint
-from weldbasis.wishes import Wish, read_wish
+from weldbasis.settling.against import why_not_value
+from weldbasis.settling.wishes import Wish, read_wish
 
 
 @pytest.fixture(scope="module")

@@ -10,7 +10,7 @@ from weldbasis.knowledge import Quantity
 from weldbasis.nearest import nearest_text
 from weldbasis.reading import value_of
 from weldbasis.sentences import outcome_text, say, value_text, why_not
-from weldbasis.settle import ANALYSIS, Narrowing, open_inputs
+from weldbasis.settling.settle import ANALYSIS, Narrowing, open_inputs
 from weldbasis.state import demanding_end, state_of
 from weldbasis.steps import member_rows, origin_at
 from weldbasis.trace import Finding, Ref, Value

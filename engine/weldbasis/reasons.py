@@ -9,7 +9,7 @@ from weldbasis.findings import findings_of
 from weldbasis.graph import quantity_node
 from weldbasis.knowledge import Quantity
 from weldbasis.narrow import in_parts_text
-from weldbasis.settle import Narrowing, settle
+from weldbasis.settling.settle import Narrowing, settle
 from weldbasis.state import demanding_end, state_of
 from weldbasis.steps import Steps, member_rows, refs_in_order
 from weldbasis.trace import Decision, JointTrace, Ref, Step

@@ -19,7 +19,7 @@ from weldbasis.knowledge import Quantity
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project
 from weldbasis.reasons import trace_joint
-from weldbasis.settle import settle
+from weldbasis.settling.settle import settle
 from weldbasis.steps import values_of
 from weldbasis.trace import JointTrace, Value
 

@@ -7,9 +7,9 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from weldbasis.authority.house import amended_records, house_problems
 from weldbasis.cases import CaseResult, run_cases
 from weldbasis.graph import build_graph
-from weldbasis.house import amended_records, house_problems
 from weldbasis.knowledge import Knowledge
 from weldbasis.problem import Place, Problem
 from weldbasis.proofs.domain import domain_of, never_applies
@@ -20,7 +20,7 @@ from weldbasis.proofs.papers import case_findings, missing_papers, uncased_rules
 from weldbasis.proofs.reach import reach_of
 from weldbasis.proofs.tables import table_findings
 from weldbasis.proofs.unused import unused_parts
-from weldbasis.soundness import Escape
+from weldbasis.survey.soundness import Escape
 
 
 @dataclass(frozen=True)

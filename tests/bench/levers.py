@@ -14,18 +14,18 @@ from typing import TypeVar
 
 import numpy as np
 
-from weldbasis.edges import edges
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
-from weldbasis.levers import levers
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder, site_folder
 from weldbasis.project import read_project
-from weldbasis.sampling import plan_samples
-from weldbasis.settle import settle
-from weldbasis.trials import alike
+from weldbasis.settling.edges import edges
+from weldbasis.settling.levers import levers
+from weldbasis.settling.sampling import plan_samples
+from weldbasis.settling.settle import settle
+from weldbasis.settling.trials import alike
 from weldbasis.values import Column, Numbers
 
 T = TypeVar("T")

@@ -14,7 +14,6 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from weldbasis.draw import points_in
 from weldbasis.evaluate import evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph, build_graph
@@ -23,6 +22,7 @@ from weldbasis.load.knowledge import load_knowledge
 from weldbasis.narrow import narrowed
 from weldbasis.places import kb_folder, site_folder
 from weldbasis.project import read_project
+from weldbasis.survey.draw import points_in
 from weldbasis.turning import turning_figures
 from weldbasis.values import PRESENT, Column, Floats, Numbers, chosen
 

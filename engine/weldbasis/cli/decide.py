@@ -12,6 +12,8 @@ from typing import Any
 import click
 from rich.table import Table
 
+from weldbasis.authority.history import keep_record
+from weldbasis.authority.sign_offs import SignOff, add_sign_off, signed_part, unknown_joint
 from weldbasis.cli.console import (
     CAUTION,
     json_option,
@@ -22,14 +24,12 @@ from weldbasis.cli.console import (
     terminal,
 )
 from weldbasis.evaluate import Evaluation, evaluate
-from weldbasis.history import keep_record
 from weldbasis.narrow import narrowed
 from weldbasis.problem import Place, nearest
 from weldbasis.project import Project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import canonical_bytes, digest_of, record_from_traces, write_aside
-from weldbasis.settle import settle
-from weldbasis.sign_offs import SignOff, add_sign_off, signed_part, unknown_joint
+from weldbasis.settling.settle import settle
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text, finding_count_text
 from weldbasis.words import counted

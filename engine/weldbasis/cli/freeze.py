@@ -8,13 +8,13 @@ from pathlib import Path
 
 import click
 
+from weldbasis.authority.releases import news, release_data, releases_of, version_problems
 from weldbasis.cli.console import private_key
 from weldbasis.load.knowledge import knowledge_of
 from weldbasis.load.layers import read_layers
 from weldbasis.places import kb_folder
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.record import canonical_bytes, write_aside
-from weldbasis.releases import news, release_data, releases_of, version_problems
 from weldbasis.vet import vet
 from weldbasis.words import counted
 

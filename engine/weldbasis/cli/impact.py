@@ -12,8 +12,8 @@ import click
 from rich.table import Table
 from rich.text import Text
 
+from weldbasis.authority.impact import Cause, Move, ProjectImpact, Way, impact
 from weldbasis.cli.console import CAUTION, json_option, kb_option, terminal
-from weldbasis.impact import Cause, Move, ProjectImpact, Way, impact
 from weldbasis.knowledge import Knowledge
 from weldbasis.project.pinned import project_document, rules_folder, rules_named
 from weldbasis.words import counted

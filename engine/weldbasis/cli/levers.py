@@ -10,15 +10,15 @@ from pathlib import Path
 import click
 from rich.table import Table as Grid
 
-from weldbasis.against import consequences
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
-from weldbasis.edges import Edge, edges
 from weldbasis.evaluate import Evaluation, evaluate
-from weldbasis.lever_words import bar_places, change_text, edge_text, free_text, hold_text, setting_text
-from weldbasis.levers import JointLevers, Margin, Table, levers
 from weldbasis.reading import value_of
 from weldbasis.sentences import outcome_text, value_text
-from weldbasis.wishes import Way, Wish, cheapest, read_wish, trial_of
+from weldbasis.settling.against import consequences
+from weldbasis.settling.edges import Edge, edges
+from weldbasis.settling.lever_words import bar_places, change_text, edge_text, free_text, hold_text, setting_text
+from weldbasis.settling.levers import JointLevers, Margin, Table, levers
+from weldbasis.settling.wishes import Way, Wish, cheapest, read_wish, trial_of
 from weldbasis.words import number_text, range_text, with_unit
 
 _BAR = 30

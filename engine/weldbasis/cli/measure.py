@@ -8,15 +8,15 @@ from typing import Any
 import click
 
 from weldbasis.cli.console import progress
-from weldbasis.directions import audit
-from weldbasis.directions import summary as directions_summary
 from weldbasis.graph import build_graph
-from weldbasis.guard import guard
-from weldbasis.guard import summary as figures_summary
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.yaml_text import read_yaml
 from weldbasis.places import site_folder
 from weldbasis.record import canonical_bytes, write_aside
+from weldbasis.survey.directions import audit
+from weldbasis.survey.directions import summary as directions_summary
+from weldbasis.survey.guard import guard
+from weldbasis.survey.guard import summary as figures_summary
 from weldbasis.words import counted
 
 _JOINTS = 25_000

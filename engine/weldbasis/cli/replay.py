@@ -8,13 +8,13 @@ from typing import Any
 
 import click
 
+from weldbasis.authority.sign_offs import SIGN_OFFS, read_sign_offs, standing_of
 from weldbasis.cli.console import kb_option, rules_and_project
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.narrow import narrowed
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project import Project
 from weldbasis.record import read_record, record_of, replay
-from weldbasis.sign_offs import SIGN_OFFS, read_sign_offs, standing_of
 from weldbasis.words import counted
 
 _MOST_LINES = 40

@@ -8,6 +8,7 @@ from pathlib import Path
 
 import click
 
+from weldbasis.authority.releases import releases_of, version_problems
 from weldbasis.cases import nature_counts
 from weldbasis.cli.console import json_option, progress
 from weldbasis.cli.measure import look_at_directions, look_at_figures
@@ -17,8 +18,7 @@ from weldbasis.load.knowledge import load_knowledge
 from weldbasis.places import kb_folder
 from weldbasis.problem import Refused
 from weldbasis.proofs.finding import VetFinding
-from weldbasis.releases import releases_of, version_problems
-from weldbasis.soundness import try_points
+from weldbasis.survey.soundness import try_points
 from weldbasis.vet import VetReport, from_escape, from_problem, vet, with_problems
 from weldbasis.words import places
 

@@ -10,7 +10,6 @@ from pathlib import Path
 import click
 from rich.padding import Padding
 
-from weldbasis.against import why_not_value
 from weldbasis.cli.console import CAUTION, joint_row, json_option, kb_option, rules_and_project, terminal
 from weldbasis.cli.why_not import show_why_not
 from weldbasis.evaluate import Evaluation, evaluate
@@ -18,9 +17,10 @@ from weldbasis.narrow import narrowed
 from weldbasis.problem import nearest
 from weldbasis.reasons import bears_on_text, trace_joint
 from weldbasis.sentences import value_text
+from weldbasis.settling.against import why_not_value
+from weldbasis.settling.wishes import read_wish
 from weldbasis.trace import Decision, JointTrace, Ref, Step
 from weldbasis.views import decision_text
-from weldbasis.wishes import read_wish
 
 
 @click.command("why")

@@ -8,11 +8,11 @@ import json
 import click
 from rich.padding import Padding
 
-from weldbasis.against import WhyNot
 from weldbasis.cli.console import CAUTION, terminal
 from weldbasis.evaluate import Evaluation
-from weldbasis.lever_words import setting_text
 from weldbasis.sentences import outcome_text
+from weldbasis.settling.against import WhyNot
+from weldbasis.settling.lever_words import setting_text
 
 
 def show_why_not(evaluation: Evaluation, row: int, found: WhyNot, as_json: bool) -> None:

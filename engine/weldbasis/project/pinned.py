@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
+from weldbasis.authority.releases import knowledge_of_release
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.load.release import read_release, release_names
@@ -12,7 +13,6 @@ from weldbasis.load.yaml_text import Document, read_yaml
 from weldbasis.places import kb_folder
 from weldbasis.problem import Place, Problem, Refused
 from weldbasis.project.reading import shown_path
-from weldbasis.releases import knowledge_of_release
 
 
 def project_document(path: Path) -> Document:

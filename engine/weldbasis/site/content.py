@@ -12,24 +12,24 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from weldbasis.changes import differences_between
-from weldbasis.edges import Edge, edges
+from weldbasis.authority.changes import differences_between
+from weldbasis.authority.history import Kept, kept_records
+from weldbasis.authority.impact import ProjectImpact, impact
+from weldbasis.authority.releases import releases_of
+from weldbasis.authority.sign_offs import SIGN_OFFS, Standing, read_sign_offs, standing_of
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph, build_graph
-from weldbasis.history import Kept, kept_records
-from weldbasis.impact import ProjectImpact, impact
 from weldbasis.knowledge import Knowledge
-from weldbasis.levers import JointLevers, levers
 from weldbasis.load.knowledge import load_knowledge
 from weldbasis.narrow import narrowed
 from weldbasis.project import Project, read_project
 from weldbasis.project.pinned import project_document, rules_folder
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record, record_of_joints
-from weldbasis.releases import releases_of
-from weldbasis.sampling import Plan, plan_samples
-from weldbasis.settle import Narrowing, settle
-from weldbasis.sign_offs import SIGN_OFFS, Standing, read_sign_offs, standing_of
+from weldbasis.settling.edges import Edge, edges
+from weldbasis.settling.levers import JointLevers, levers
+from weldbasis.settling.sampling import Plan, plan_samples
+from weldbasis.settling.settle import Narrowing, settle
 from weldbasis.site.workers import each_row
 from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text

@@ -7,11 +7,11 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
-from weldbasis.guard import reason_for
 from weldbasis.knowledge import Knowledge
 from weldbasis.load.yaml_text import read_yaml
 from weldbasis.places import site_folder
 from weldbasis.site.render import page
+from weldbasis.survey.guard import reason_for
 
 
 def guard_body(knowledge: Knowledge) -> str:

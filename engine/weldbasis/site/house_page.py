@@ -5,13 +5,13 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from weldbasis.house import Amended, amended_records
-from weldbasis.impact import Cause, Move, ProjectImpact
+from weldbasis.authority.house import Amended, amended_records
+from weldbasis.authority.impact import Cause, Move, ProjectImpact
+from weldbasis.authority.strictness import Example
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.reasons import governing_rules
 from weldbasis.site.render import page
 from weldbasis.steps import Steps
-from weldbasis.strictness import Example
 from weldbasis.trace import Ref
 
 _MOST_TRACES = 24

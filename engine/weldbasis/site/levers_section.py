@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from weldbasis.edges import Edge
 from weldbasis.evaluate import Evaluation
-from weldbasis.lever_words import bar_places, change_text, edge_text, free_text, hold_text
-from weldbasis.levers import JointLevers, Margin, Table
 from weldbasis.sentences import outcome_text, value_text
+from weldbasis.settling.edges import Edge
+from weldbasis.settling.lever_words import bar_places, change_text, edge_text, free_text, hold_text
+from weldbasis.settling.levers import JointLevers, Margin, Table
 from weldbasis.site.render import page
 from weldbasis.words import range_text, unit_text
 

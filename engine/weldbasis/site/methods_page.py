@@ -9,7 +9,13 @@ from typing import Any
 import numpy as np
 from markupsafe import Markup
 
-from weldbasis.agreement import (
+from weldbasis.load.yaml_text import read_yaml
+from weldbasis.places import site_folder
+from weldbasis.ranges import parse_range
+from weldbasis.site.content import Content
+from weldbasis.site.method_curves import Curve, Point, method_curves
+from weldbasis.site.render import page
+from weldbasis.survey.agreement import (
     Lattice,
     LimitLeft,
     Pair,
@@ -23,12 +29,6 @@ from weldbasis.agreement import (
     walk_lattice,
     widest,
 )
-from weldbasis.load.yaml_text import read_yaml
-from weldbasis.places import site_folder
-from weldbasis.ranges import parse_range
-from weldbasis.site.content import Content
-from weldbasis.site.method_curves import Curve, Point, method_curves
-from weldbasis.site.render import page
 from weldbasis.values import Numbers
 from weldbasis.words import number_text, unit_text
 

@@ -10,8 +10,8 @@ from weldbasis.findings import cases_text
 from weldbasis.kinds.condition import Condition
 from weldbasis.knowledge import Quantity
 from weldbasis.project.steels import ELEMENTS
-from weldbasis.sampling import Plan, Steel
-from weldbasis.settle import ANALYSIS, open_analyses, open_decisions, steels_of
+from weldbasis.settling.sampling import Plan, Steel
+from weldbasis.settling.settle import ANALYSIS, open_analyses, open_decisions, steels_of
 from weldbasis.site.content import Decided
 from weldbasis.site.range_pictures import RangeRow, Tick, composition_ranges
 from weldbasis.site.render import page

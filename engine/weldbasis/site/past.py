@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from markupsafe import Markup
 
-from weldbasis.history import Moved, given_in, history_of
-from weldbasis.sign_offs import Standing
+from weldbasis.authority.history import Moved, given_in, history_of
+from weldbasis.authority.sign_offs import Standing
 from weldbasis.site.content import Decided
 from weldbasis.site.render import page
 

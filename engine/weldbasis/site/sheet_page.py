@@ -13,10 +13,10 @@ from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Era, Grade, Knowledge, Quantity
 from weldbasis.load.yaml_text import read_yaml
 from weldbasis.places import site_folder
-from weldbasis.sheets import BESIDE, PREHEAT, Sheet, Sheets, decide_sheets, reach_text, sheet
 from weldbasis.site.pictures import svg
 from weldbasis.site.render import page
 from weldbasis.state import demanding_end
+from weldbasis.survey.sheets import BESIDE, PREHEAT, Sheet, Sheets, decide_sheets, reach_text, sheet
 from weldbasis.trace import Value
 from weldbasis.words import level_titles, number_text
 

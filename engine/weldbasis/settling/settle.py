@@ -14,13 +14,13 @@ import numpy as np
 
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
-from weldbasis.narrowing import ANALYSIS, Case, Narrowing, left_in_words, share_left
 from weldbasis.reading import value_of
+from weldbasis.settling.narrowing import ANALYSIS, Case, Narrowing, left_in_words, share_left
+from weldbasis.settling.trials import Pin, Trial, alike, demands_of, member_rows, outcomes
+from weldbasis.settling.walks import Asked, Walk, not_harder, steps_between
 from weldbasis.state import open_rows, state_of
 from weldbasis.trace import Ref, Value
-from weldbasis.trials import Pin, Trial, alike, demands_of, member_rows, outcomes
 from weldbasis.values import Column, Numbers, levels_of, may_be_at
-from weldbasis.walks import Asked, Walk, not_harder, steps_between
 
 __all__ = [
     "ANALYSIS",

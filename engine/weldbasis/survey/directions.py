@@ -17,9 +17,9 @@ from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.kinds.limit import violated
 from weldbasis.knowledge import Knowledge
-from weldbasis.lattice import lattice, steel_of_grade
 from weldbasis.project.steels import ELEMENTS
 from weldbasis.state import demand
+from weldbasis.survey.lattice import lattice, steel_of_grade
 from weldbasis.values import PRESENT, Column, Floats, Levels, Numbers, level_sets
 
 FORMAT = "weldbasis-directions/1"

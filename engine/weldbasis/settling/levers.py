@@ -12,12 +12,12 @@ from weldbasis.evaluate import Evaluation
 from weldbasis.graph import quantity_node
 from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
-from weldbasis.settle import steels_of
+from weldbasis.settling.settle import steels_of
+from weldbasis.settling.trials import Trial, alike, demands_of, outcomes, pin_to
+from weldbasis.settling.walks import Asked, Walk, first_easier, first_other, not_harder, steps_between
 from weldbasis.state import UNCOVERED, demand_of
 from weldbasis.trace import Ref, Value
-from weldbasis.trials import Trial, alike, demands_of, outcomes, pin_to
 from weldbasis.values import may_be_at
-from weldbasis.walks import Asked, Walk, first_easier, first_other, not_harder, steps_between
 
 _OLD = frozenset({"era-envelope", "samples", "unknown"})  # where the composition of standing steel comes from
 

@@ -11,9 +11,9 @@ import numpy as np
 
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
-from weldbasis.settle import open_analyses, open_decisions, steels_of
+from weldbasis.settling.settle import open_analyses, open_decisions, steels_of
+from weldbasis.settling.trials import Pin, Trial, alike, outcomes
 from weldbasis.state import open_rows
-from weldbasis.trials import Pin, Trial, alike, outcomes
 from weldbasis.values import ABSENT, Numbers
 
 _MOST_TOGETHER = 3  # steels of one joint that are sampled together

@@ -13,8 +13,8 @@ from dataclasses import dataclass
 
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
+from weldbasis.settling.trials import Pin, Trial, outcomes
 from weldbasis.state import demand_of
-from weldbasis.trials import Pin, Trial, outcomes
 
 
 @dataclass(frozen=True)

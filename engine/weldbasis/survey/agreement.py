@@ -17,7 +17,7 @@ from weldbasis.kinds.governing import Governing
 from weldbasis.knowledge import Knowledge, Quantity
 from weldbasis.project.columns import JointRow
 from weldbasis.project.given import Fact
-from weldbasis.typical import Setting, joints_of_grade, lattice_facts, typical_analysis
+from weldbasis.survey.typical import Setting, joints_of_grade, lattice_facts, typical_analysis
 from weldbasis.values import Floats, Numbers, levels_of
 from weldbasis.words import levels_text
 

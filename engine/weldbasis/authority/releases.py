@@ -8,7 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from weldbasis import __version__
-from weldbasis.changes import Difference, differences_between
+from weldbasis.authority.changes import Difference, differences_between
 from weldbasis.knowledge import Knowledge, Rule
 from weldbasis.load.knowledge import knowledge_of
 from weldbasis.load.layer import Layer, Layers

@@ -6,9 +6,9 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Any
 
+from weldbasis.authority.strictness import Strictness, strictness_of
 from weldbasis.knowledge import Amendment, Knowledge, Quantity, Rule
 from weldbasis.problem import Problem
-from weldbasis.strictness import Strictness, strictness_of
 
 
 @dataclass(frozen=True)

@@ -8,9 +8,9 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Literal
 
+from weldbasis.authority.history import decisions_moved, given_in, inputs_moved
 from weldbasis.evaluate import Evaluation
 from weldbasis.graph import KnowledgeGraph, quantity_node
-from weldbasis.history import decisions_moved, given_in, inputs_moved
 from weldbasis.load.schema import schema_problems
 from weldbasis.load.signature import sign, signature_fault
 from weldbasis.load.yaml_text import read_yaml

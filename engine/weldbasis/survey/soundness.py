@@ -11,12 +11,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from weldbasis.draw import points_in, random_boxes
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Knowledge
 from weldbasis.narrow import narrowed
+from weldbasis.survey.draw import points_in, random_boxes
 from weldbasis.turning import turning_figures
 from weldbasis.values import ABSENT, PRESENT, Bools, Column, Floats, Ints, Levels, Numbers
 

@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import math
 
-from weldbasis.edges import Edge
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
-from weldbasis.levers import Change, Hold, Margin
 from weldbasis.sentences import outcome_text
-from weldbasis.trials import member_rows
+from weldbasis.settling.edges import Edge
+from weldbasis.settling.levers import Change, Hold, Margin
+from weldbasis.settling.trials import member_rows
 from weldbasis.words import level_titles, number_text, with_unit
 
 

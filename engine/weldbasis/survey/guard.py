@@ -7,7 +7,6 @@ from dataclasses import dataclass, replace
 from typing import Any
 
 from weldbasis.cases import outcome_faults
-from weldbasis.figures import Figure, figures_of, nudged, nudges
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.kinds import compile_rule
 from weldbasis.knowledge import Case, Knowledge, Rule
@@ -15,6 +14,7 @@ from weldbasis.problem import Refused
 from weldbasis.proofs.domain import domain_of
 from weldbasis.proofs.formulas import wrong_directions
 from weldbasis.proofs.tables import table_findings
+from weldbasis.survey.figures import Figure, figures_of, nudged, nudges
 
 FORMAT = "weldbasis-figures/1"
 

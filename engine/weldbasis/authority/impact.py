@@ -12,9 +12,9 @@ from typing import Literal
 
 import numpy as np
 
-from weldbasis.changes import KEPT_IN, Difference, differences_between
+from weldbasis.authority.changes import KEPT_IN, Difference, differences_between
+from weldbasis.authority.governors import governors
 from weldbasis.evaluate import Evaluation, evaluate
-from weldbasis.governors import governors
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
 from weldbasis.narrow import narrowed

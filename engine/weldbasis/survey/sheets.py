@@ -14,12 +14,12 @@ from typing import Any
 from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Era, Grade, Knowledge
-from weldbasis.lattice import Lattice, lattice, steel_of_era, steel_of_grade
 from weldbasis.nearest import nearest_text
 from weldbasis.project.grades import limits_in, reach_of
 from weldbasis.ranges import Range
 from weldbasis.reading import value_of
 from weldbasis.state import demanding_end
+from weldbasis.survey.lattice import Lattice, lattice, steel_of_era, steel_of_grade
 from weldbasis.trace import Value
 
 PREHEAT = "min_preheat"

@@ -11,14 +11,14 @@ import numpy as np
 
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Knowledge, Quantity
-from weldbasis.levers import Hold, distance, holds_of, settings_of
 from weldbasis.problem import nearest
 from weldbasis.reading import value_of
+from weldbasis.settling.levers import Hold, distance, holds_of, settings_of
+from weldbasis.settling.trials import Pin, Trial, outcomes, pin_to
+from weldbasis.settling.walks import steps_between
 from weldbasis.trace import Value
-from weldbasis.trials import Pin, Trial, outcomes, pin_to
 from weldbasis.units import read_number
 from weldbasis.values import PRESENT, Bools, Column, Numbers
-from weldbasis.walks import steps_between
 
 _WISH = re.compile(r"\s*(.+?)\s*(<=|>=|≤|≥|<|>|==|=)\s*(.+?)\s*")
 

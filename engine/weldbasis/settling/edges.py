@@ -13,10 +13,10 @@ import numpy as np
 from weldbasis.evaluate import Evaluation
 from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
-from weldbasis.settle import steels_of
+from weldbasis.settling.settle import steels_of
+from weldbasis.settling.trials import Pin, Trial, alike, outcomes
 from weldbasis.state import demand_of
 from weldbasis.trace import Ref, Value
-from weldbasis.trials import Pin, Trial, alike, outcomes
 from weldbasis.values import Numbers, may_be_at
 
 _READ = frozenset({"certificate", "samples"})  # where a composition is a reading, not a limit or an assumption

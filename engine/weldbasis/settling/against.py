@@ -10,11 +10,11 @@ from weldbasis.findings import findings_of
 from weldbasis.knowledge import Quantity
 from weldbasis.reading import value_of
 from weldbasis.reasons import trace_joint
+from weldbasis.settling.trials import Pin, Trial, decided_again
+from weldbasis.settling.wishes import Wish
 from weldbasis.state import demanding_end, state_of
 from weldbasis.trace import Finding, JointTrace, Ref, Step, Value
-from weldbasis.trials import Pin, Trial, decided_again
 from weldbasis.values import mask_of
-from weldbasis.wishes import Wish
 
 
 @dataclass(frozen=True)
