@@ -62,7 +62,7 @@ def test_from_home_to_the_clause(page: Page, home: str) -> None:
     assert "697 × CET" in page.locator(".wb-formula").inner_text()
     page.locator("main a", has_text="EN 1011-2").first.click()
     assert page.url.endswith("sources/index.html#en-1011-2")
-    assert page.locator("#en-1011-2").is_visible()
+    page.locator("#en-1011-2").wait_for(state="visible")
 
 
 def test_filter_and_sort_the_joints(page: Page, home: str) -> None:

@@ -114,7 +114,7 @@ PLANTED: list[tuple[str, str, str, int | str, str]] = [
     (MIN, "T: preheat_required", "T: min_preheat", 1, "the rules close a circle"),
     (HOURS, "model: plate-diffusion-time", "model: plate-difusion-time", 7, "there is no model 'plate-difusion-time'"),
     (HOURS, "d0_low_cm2_s: 0.12, ", "", 9, "needs d0_low_cm2_s among its constants"),
-    (JOINT, "id: restraint_length", "id: restraint_intensity", 72, "stands here a second time"),
+    (JOINT, "id: restraint_length", "id: restraint_intensity", 79, "stands here a second time"),
     ("cases/restraint.yaml", "rule: restraint-factor", "rule: restraint-facto", 3, "which is no rule"),
     ("cases/restraint.yaml", '{restraint: "low"}', '{restrant: "low"}', 3,
      "'restrant' is no quantity of the vocabulary"),
