@@ -29,7 +29,9 @@ def graph(knowledge: Knowledge) -> KnowledgeGraph:
 
 @pytest.fixture(scope="session")
 def examples() -> tuple[Path, ...]:
-    return tuple(sorted(path.parent for path in (site_folder() / "projects").glob("*/project.yaml")))
+    """The example projects that are decided with the published rules as they stand."""
+    files = sorted((site_folder() / "projects").glob("*/project.yaml"))
+    return tuple(file.parent for file in files if "rules: working" in file.read_text(encoding="utf-8"))
 
 
 @pytest.fixture(autouse=True)

@@ -37,7 +37,7 @@ def rows_of(evaluation: Evaluation, joint: int, ref: Ref) -> tuple[int, ...]:
 
 
 def check_turns(evaluation: Evaluation, found: dict[tuple[int, str], tuple[Narrowing, ...]]) -> int:
-    """Every turning value: all values tried on the easy side ask what its end asks, the next value asks more."""
+    """Every turning value: all values tried on the easy side ask what its end asks, and beyond it some ask more."""
     checked = 0
     for (joint, name), some in found.items():
         decision = evaluation.knowledge.quantities[name]
@@ -52,12 +52,14 @@ def check_turns(evaluation: Evaluation, found: dict[tuple[int, str], tuple[Narro
             assert rest.high is not None
             rising = rest.low > easy.low
             start, edge, after = (easy.low, easy.high, rest.low) if rising else (easy.high, easy.low, rest.high)
-            values = [start, edge, after, *np.linspace(easy.low, easy.high, 7)]
+            beyond = np.linspace(rest.low, rest.high, 9)
+            values = [start, edge, after, *beyond, *np.linspace(easy.low, easy.high, 7)]
             trials = [Trial(joint, (Pin(narrowing.ref.quantity, rows, v, v),)) for v in values]
             asked = demands_of(evaluation, trials, [decision])[:, 0]
             assert asked[1] == asked[0]
-            assert asked[2] > asked[0], (evaluation.facts.joints[joint], name, narrowing)
-            assert (asked[3:] <= asked[0]).all()
+            assert asked[2] >= asked[0], (evaluation.facts.joints[joint], name)  # the edge lies on the safe side
+            assert (asked[3:12] > asked[0]).any()
+            assert (asked[12:] <= asked[0]).all()
             step = 10.0 ** -evaluation.knowledge.quantities[narrowing.ref.quantity].decimals
             assert abs(after - edge) <= step * 1.001
             checked += 1
@@ -69,7 +71,7 @@ def test_turning_values_of_the_examples(evaluations: tuple[Evaluation, ...]) -> 
     assert checked >= 10
 
 
-@settings(max_examples=8)
+@settings(max_examples=5)
 @given(seed=st.integers(0, 10**6))
 def test_turning_values_of_drawn_joints(evaluations: tuple[Evaluation, ...], seed: int) -> None:
     evaluation = drawn_joints(evaluations, seed)

@@ -1,7 +1,7 @@
 """The mkdocs plugin that feeds generated pages in memory and fills the many pages of joints and rules from one frame.
 
 Pages that stand in the navigation go through mkdocs. Joint, rule and steel pages would each cost a run of the whole
-theme; instead the theme renders one empty frame per depth of folder, and their bodies are put into copies of it.
+theme; instead the theme renders one empty frame per folder, and their bodies are put into copies of it.
 """
 
 from __future__ import annotations
@@ -43,7 +43,7 @@ from weldbasis.trace import JointTrace
 from weldbasis.views import decision_text
 
 _TITLE, _BODY = "WBTITLEWB", "WBBODYWB"
-_FRAMES = {1: "rules/_frame.md", 3: "projects/_frame/joints/_frame.md"}
+_FRAMES = {"rules": "rules/_frame.md", "steels": "steels/_frame.md", "joints": "projects/_frame/joints/_frame.md"}
 _SEARCH = "search/search_index.json"
 _WRITTEN = 2  # pages that stand as they were written: how to read a trace, cautions
 
@@ -105,14 +105,15 @@ class WeldbasisPlugin(BasePlugin):  # type: ignore[type-arg, no-untyped-call]  #
     def on_post_build(self, *, config: MkDocsConfig) -> None:
         """Fill the frames, add the pages' titles to the search index, take the frames away."""
         site = Path(config.site_dir)
-        frames = {depth: (site / uri).with_suffix(".html") for depth, uri in _FRAMES.items()}
-        texts = {depth: path.read_text(encoding="utf-8") for depth, path in frames.items()}
-        found = [part(site, texts[1]) for part in (self._rule_pages, self._steel_pages, self._sheet_pages)]
-        found += [self._joint_pages(site, texts[3], decided) for decided in self.content.projects]
+        frames = {folder: (site / uri).with_suffix(".html") for folder, uri in _FRAMES.items()}
+        texts = {folder: path.read_text(encoding="utf-8") for folder, path in frames.items()}
+        found = [self._rule_pages(site, texts["rules"])]
+        found += [part(site, texts["steels"]) for part in (self._steel_pages, self._sheet_pages)]
+        found += [self._joint_pages(site, texts["joints"], decided) for decided in self.content.projects]
         for path in frames.values():
             path.unlink()
-        frames[3].parent.rmdir()
-        frames[3].parent.parent.rmdir()
+        frames["joints"].parent.rmdir()
+        frames["joints"].parent.parent.rmdir()
         self.pages = len(self._navigated()) + _WRITTEN + sum(len(entries) for entries in found)
         index = site / _SEARCH
         data = json.loads(index.read_text(encoding="utf-8"))
