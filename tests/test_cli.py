@@ -207,6 +207,31 @@ def test_vet_of_the_published_practice_is_clean(started: Path) -> None:
     assert data["counts"]["cases"] == data["counts"]["cases passed"]
 
 
+def test_show_prints_a_rule_with_its_table_and_history(started: Path) -> None:
+    done = run("show", "process-efficiency", cwd=started)
+    assert done.returncode == 0, done.stderr
+    assert "a table for each joint, layer published" in done.stdout
+    assert "111 or 135" in done.stdout
+    assert "Version 1, 2026-12-01" in done.stdout
+    assert "process-efficiency.yaml:1:1" in done.stdout
+    done = run("show", "process-efficency", cwd=started)
+    assert (done.returncode, "Did you mean 'process-efficiency'?" in done.stderr) == (2, True)
+
+
+def test_watching_looks_again_when_a_file_is_saved(tmp_path: Path) -> None:
+    run("start", "--house", "yard", cwd=tmp_path)
+    words = [sys.executable, "-u", "-m", "weldbasis.cli.main", "vet", "yard", "--quiet", "--watch"]
+    with subprocess.Popen(words, cwd=tmp_path, stdout=subprocess.PIPE, text=True, encoding="utf-8") as watching:
+        assert watching.stdout is not None
+        try:
+            assert any("0 findings that stop work" in line for line in iter(watching.stdout.readline, ""))
+            file = tmp_path / "yard/amendments.yaml"
+            file.write_text(file.read_text(encoding="utf-8").replace("how: add", "how: tighten"), encoding="utf-8")
+            assert any("there is no rule 'house-thick" in line for line in iter(watching.stdout.readline, ""))
+        finally:
+            watching.kill()
+
+
 def test_every_command_teaches(started: Path) -> None:
     for name in COMMANDS:
         done = run(name, "--help", cwd=started)

@@ -15,7 +15,7 @@ from weldbasis.graph import KnowledgeGraph
 from weldbasis.knowledge import Grade, Knowledge
 from weldbasis.project import read_project
 from weldbasis.reading import value_of
-from weldbasis.site.sheet_page import cell_html, conditions, sheet_body
+from weldbasis.site.sheet_page import cell_html, conditions, preheat_picture, sheet_body
 from weldbasis.state import demanding_end
 from weldbasis.survey.sheets import BESIDE, PREHEAT, Sheets, decide_sheets, sheet
 from weldbasis.trace import Value
@@ -63,7 +63,20 @@ def test_every_grade_and_envelope_has_a_sheet_that_leaves_nothing_silent(sheets:
             assert len(line.preheat) == len(sheets.conditions["hydrogen"])
         if any(value.presence == "absent" for line in made for value in line.preheat):
             assert found.gaps, found.steel.id
-            assert all(gap.startswith("The nearest rule is ") for gap in found.gaps)
+            assert all("The nearest rule is " in gap or "No rule gives it" in gap for gap in found.gaps)
+
+
+def test_the_picture_shows_no_more_than_the_table(sheets: Sheets) -> None:
+    """No point where the steel is not made or nothing is covered, and no line across such a place."""
+    gaps = 0
+    for number in range(0, len(sheets.steels), 3):
+        found = sheet(sheets, number)
+        made = {line.thickness_mm for line in found.lines if line.made}
+        assert set(found.worst) == made
+        shown = sum(value.high is not None for values in found.worst.values() for value in values)
+        assert preheat_picture(found, sheets.conditions).count("<circle") == shown, found.steel.id
+        gaps += len(made) < len(sheets.conditions["thickness_mm"])
+    assert gaps > 5
 
 
 def test_more_hydrogen_and_restraint_never_ask_for_less(sheets: Sheets) -> None:

@@ -17,6 +17,7 @@ COMMANDS: Mapping[str, str] = {
     "decide": "evaluate a project, write its record, print the joint table",
     "why": "the trace of one joint, in the terminal",
     "levers": "how close a joint is to tipping, and what would relax it",
+    "show": "one rule in words, with its table",
     "impact": "what a change from one rule set to another does to projects",
     "freeze": "release the rule set: one file with a digest, signed if you like",
     "replay": "recompute a record and compare, byte by byte",

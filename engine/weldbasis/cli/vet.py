@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 import dataclasses
+import datetime
 import json
+import time
+from collections.abc import Callable
 from pathlib import Path
 
 import click
@@ -22,6 +25,7 @@ from weldbasis.survey.soundness import try_points
 from weldbasis.vet import VetReport, from_escape, from_problem, vet, with_problems
 from weldbasis.words import places
 
+_PAUSE_S = 0.5  # between two looks at the files
 _SCREEN = 7  # findings of three lines or so that fit a screen with the summary
 
 
@@ -45,6 +49,7 @@ _SCREEN = 7  # findings of three lines or so that fit a screen with the summary
     default=None,
     help="Keep what --figures or --directions found in this file.",
 )
+@click.option("--watch", is_flag=True, help="Look again whenever a file of the rules is saved, until stopped.")
 @click.option("--all", "every", is_flag=True, help="Every finding, not only the first of each sort.")
 @json_option
 def command(
@@ -54,6 +59,7 @@ def command(
     figures: bool,
     directions: bool,
     write: Path | None,
+    watch: bool,
     every: bool,
     as_json: bool,
 ) -> None:
@@ -72,20 +78,38 @@ def command(
         knowledge = load_knowledge(kb or kb_folder())
         (look_at_figures if figures else look_at_directions)(knowledge, write)
         return
-    try:
-        folder = kb or kb_folder()
-        knowledge = load_knowledge(folder)
-        report = with_problems(vet(knowledge), version_problems(knowledge, releases_of(folder)), "versions")
-        if points:
-            report = _with_points(report, knowledge, points)
-    except Refused as refused:
-        report = VetReport(tuple(from_problem(problem) for problem in refused.problems), (), {})
+    folder = kb or kb_folder()
+    if watch:
+        _watch(folder, lambda: _show(_report(folder, 0), quiet, every))
+        return
+    report = _report(folder, points)
     if as_json:
         click.echo(json.dumps(_data(report), ensure_ascii=False, indent=1))
     else:
         _show(report, quiet, every)
     if report.stops:
         raise click.exceptions.Exit(1)
+
+
+def _report(folder: Path, points: int) -> VetReport:
+    try:
+        knowledge = load_knowledge(folder)
+        report = with_problems(vet(knowledge), version_problems(knowledge, releases_of(folder)), "versions")
+        return _with_points(report, knowledge, points) if points else report
+    except Refused as refused:
+        return VetReport(tuple(from_problem(problem) for problem in refused.problems), (), {})
+
+
+def _watch(folder: Path, look: Callable[[], None]) -> None:
+    """Look at once, and again whenever a file of the rules has changed; ends with Ctrl-C."""
+    seen: dict[Path, int] = {}
+    while True:
+        now = {path: path.stat().st_mtime_ns for path in folder.rglob("*.yaml")}
+        if now != seen:
+            seen = now
+            click.echo(f"\n{datetime.datetime.now():%H:%M:%S} {folder}")
+            look()
+        time.sleep(_PAUSE_S)
 
 
 def _with_points(report: VetReport, knowledge: Knowledge, points: int) -> VetReport:

@@ -146,12 +146,14 @@ def preheat_picture(found: Sheet, said: Mapping[str, Any]) -> str:
         names = [(number, h["name"]) for number, h in enumerate(said["hydrogen"]) if h["group"] == group]
         ends: list[float] = []
         for rank, (number, name) in enumerate(names):
-            points = [
-                (x(t_mm), y(max(values[number].high or 0.0, 0.0)))
-                for t_mm, values in found.worst.items()
-                if values[number].high is not None
-            ]
-            parts.append(_curve(points, name, rank, ends))
+            runs: list[list[tuple[float, float]]] = [[]]
+            for t_mm in said["thickness_mm"]:
+                value = found.worst[t_mm][number] if t_mm in found.worst else None
+                if value is None or value.high is None:
+                    runs.append([])  # a line never runs across what is not covered
+                else:
+                    runs[-1].append((x(t_mm), y(max(value.high, 0.0))))
+            parts.append(_curve([run for run in runs if run], name, rank, ends))
     parts.append(f'<text class="wb-tick" x="{_WIDTH / 2:.0f}" y="{_HEIGHT - 4:.0f}" text-anchor="middle">mm</text>')
     title = f"Preheat of {title_of(found.steel)} against thickness, a line for each hydrogen in mL/100 g"
     return svg(title, "".join(parts), _WIDTH, _HEIGHT)
@@ -166,15 +168,19 @@ def _rules(y: Any, top: float) -> str:
     return "".join([*parts, f'<text class="wb-tick" x="{_LEFT - 6}" y="12" text-anchor="end">°C</text>'])
 
 
-def _curve(points: Sequence[tuple[float, float]], name: str, rank: int, ends: list[float]) -> str:
-    """A line with marks, told apart by dashes and by its name at the end, which steps aside for those before it."""
-    if not points:
+def _curve(runs: Sequence[Sequence[tuple[float, float]]], name: str, rank: int, ends: list[float]) -> str:
+    """Lines with marks, told apart by dashes and by a name at the end, which steps aside for those before it."""
+    if not runs:
         return ""
-    path = " ".join(f"{px:.1f},{py:.1f}" for px, py in points)
-    dots = "".join(f'<circle class="wb-dot" cx="{px:.1f}" cy="{py:.1f}" r="2.2"/>' for px, py in points)
-    at = points[-1][1] + 4
+    parts = []
+    for run in runs:
+        path = " ".join(f"{px:.1f},{py:.1f}" for px, py in run)
+        parts.append(f'<polyline class="wb-line wb-dash-{rank}" points="{path}"/>')
+        parts += [f'<circle class="wb-dot" cx="{px:.1f}" cy="{py:.1f}" r="2.2"/>' for px, py in run]
+    last = runs[-1][-1]
+    at = last[1] + 4
     while any(abs(at - taken) < 11 for taken in ends):
         at -= 11
     ends.append(at)
-    label = f'<text class="wb-tick" x="{points[-1][0] + 7:.1f}" y="{at:.1f}">HD {escape(name)}</text>'
-    return f'<polyline class="wb-line wb-dash-{rank}" points="{path}"/>{dots}{label}'
+    parts.append(f'<text class="wb-tick" x="{last[0] + 7:.1f}" y="{at:.1f}">HD {escape(name)}</text>')
+    return "".join(parts)

@@ -6,7 +6,7 @@ is what the shop would have to do, its easy end what the kindest heat of that st
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
@@ -21,6 +21,7 @@ from weldbasis.reading import value_of
 from weldbasis.state import demanding_end
 from weldbasis.survey.lattice import Lattice, lattice, steel_of_era, steel_of_grade
 from weldbasis.trace import Value
+from weldbasis.values import ABSENT
 
 PREHEAT = "min_preheat"
 # What a sheet says beside the preheat, one column each.
@@ -44,7 +45,7 @@ class Line:
 
 @dataclass(frozen=True)
 class Sheet:
-    """The sheet of one steel. `gaps` say for some cell without a value which rule comes nearest."""
+    """The sheet of one steel. `gaps` say, once a decision, where a cell has no value and which rule comes nearest."""
 
     steel: Grade | Era
     lines: tuple[Line, ...]
@@ -52,8 +53,8 @@ class Sheet:
 
     @cached_property
     def worst(self) -> Mapping[float, tuple[Value, ...]]:
-        """The preheat for each hydrogen under the highest restraint, by thickness (mm)."""
-        return {line.thickness_mm: line.preheat for line in self.lines}
+        """The preheat for each hydrogen under the highest restraint, by thickness (mm) that the steel is made in."""
+        return {line.thickness_mm: line.preheat for line in self.lines if line.made}
 
 
 @dataclass(frozen=True)
@@ -81,23 +82,21 @@ def sheet(sheets: Sheets, number: int) -> Sheet:
     steel, conditions = sheets.steels[number], sheets.conditions
     hydrogens, restraints = len(conditions["hydrogen"]), conditions["restraint"]
     lines: list[Line] = []
-    gaps: dict[str, None] = {}
+    gaps: dict[str, str] = {}
     for thickness, t_mm in enumerate(sheets.lattice.thickness_mm):
         made = not isinstance(steel, Grade) or limits_in(steel, Range(t_mm, t_mm)) is not None
         for place, restraint in enumerate(restraints):
             rows = [sheets.lattice.row(number, thickness, h * len(restraints) + place) for h in range(hydrogens)]
             line = _line(sheets, rows, t_mm, restraint, made)
-            if made and len(gaps) < _MOST_GAPS:
-                gaps |= dict.fromkeys(_gaps(sheets, rows, line))
+            if made:
+                for name, text in _gaps(sheets, rows, line, gaps):
+                    gaps[name] = text
             last = lines[-1] if lines else None
             if last and (last.thickness_mm, last.preheat, last.beside) == (t_mm, line.preheat, line.beside):
                 lines[-1] = Line(t_mm, (*last.restraint, restraint), line.preheat, line.beside, made)
             else:
                 lines.append(line)
-    return Sheet(steel, tuple(lines), tuple(gaps))
-
-
-_MOST_GAPS = 3
+    return Sheet(steel, tuple(lines), tuple(gaps.values()))
 
 
 def _line(sheets: Sheets, rows: Sequence[int], t_mm: float, restraint: str, made: bool) -> Line:
@@ -122,12 +121,16 @@ def _most_demanding(evaluation: Evaluation, name: str, rows: Sequence[int]) -> V
     return max(values, key=rank)
 
 
-def _gaps(sheets: Sheets, rows: Sequence[int], line: Line) -> list[str]:
-    row = next((row for row, value in zip(rows, line.preheat, strict=True) if value.presence == "absent"), None)
-    if row is None:
-        return []
-    text = nearest_text(sheets.evaluation, PREHEAT, row)
-    return [text] if text else []
+def _gaps(sheets: Sheets, rows: Sequence[int], line: Line, known: Mapping[str, str]) -> Iterator[tuple[str, str]]:
+    """For every decision without a value that has no example yet: where that is, and which rule comes nearest."""
+    columns = sheets.evaluation.columns
+    for name in (PREHEAT, *BESIDE):
+        row = next((row for row in rows if columns[name].presence[row] == ABSENT), None)
+        if row is None or name in known:
+            continue
+        title = sheets.evaluation.knowledge.quantities[name].title
+        where = f"{line.thickness_mm:g} mm, restraint {line.restraint[0]}"
+        yield name, f"{title}, for example at {where}: {nearest_text(sheets.evaluation, name, row)}"
 
 
 def reach_text(steel: Grade | Era) -> str:
