@@ -18,7 +18,7 @@ from weldbasis.evaluate import Evaluation, evaluate
 from weldbasis.graph import build_graph
 from weldbasis.knowledge import Change, Knowledge, Rule
 from weldbasis.narrow import narrowed
-from weldbasis.places import kb_folder
+from weldbasis.places import kb_folder, site_folder
 from weldbasis.project import read_project
 from weldbasis.reasons import trace_joint
 from weldbasis.record import joint_record
@@ -102,6 +102,21 @@ def test_rules_that_change_places_are_switched_together(knowledge: Knowledge, ex
     found = impact(knowledge, with_rules(knowledge, new, without=("heat-input",)), examples[:1])[0]
     assert [cause.name for cause in found.causes] == ["rule heat-input, rule heat-input-new"]
     assert found.causes[0].moves == found.moves
+
+
+def test_joints_alike_are_decided_once_and_all_told(knowledge: Knowledge, changed: Knowledge, tmp_path: Path) -> None:
+    """A project with every joint three times moves three times as much, and names every joint."""
+    source = site_folder() / "projects" / "tideway-gates"
+    shutil.copytree(source, tmp_path / "gates")
+    head, *lines = (source / "welds.csv").read_text(encoding="utf-8").splitlines()
+    again = [line.replace(",", f"x{number},", 1) for number in range(3) for line in lines]
+    (tmp_path / "gates/welds.csv").write_text("\n".join([head, *again]) + "\n", encoding="utf-8")
+    once = impact(knowledge, changed, [source])[0]
+    thrice = impact(knowledge, changed, [tmp_path / "gates"])[0]
+    assert len(thrice.old.facts.joints) == len(set(thrice.stands_for.values())) <= len(lines)
+    assert [m.joint for m in thrice.moves] == [f"{m.joint}x{n}" for n in range(3) for m in once.moves]
+    assert [m.after for m in thrice.moves] == [m.after for m in once.moves] * 3
+    assert [len(c.moves) for c in thrice.causes] == [3 * len(c.moves) for c in once.causes]
 
 
 def test_keeping_what_no_change_touches_gives_the_same(knowledge: Knowledge, examples: tuple[Path, ...]) -> None:

@@ -5,7 +5,7 @@ Both sets decide all joints; then every change is switched on alone, so that eac
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 from typing import Literal
@@ -15,15 +15,18 @@ import numpy as np
 from weldbasis.authority.changes import KEPT_IN, Difference, differences_between
 from weldbasis.authority.governors import governors
 from weldbasis.evaluate import Evaluation, evaluate
+from weldbasis.facts import Facts
 from weldbasis.graph import KnowledgeGraph, build_graph
 from weldbasis.knowledge import Knowledge
+from weldbasis.meaning import meaning_of
 from weldbasis.narrow import narrowed
 from weldbasis.problem import Refused
 from weldbasis.project import Project, read_project
 from weldbasis.reading import value_of
 from weldbasis.sentences import value_text
+from weldbasis.settling.trials import alike
 from weldbasis.state import demand, state_of
-from weldbasis.values import Bools, Column, Floats, Numbers
+from weldbasis.values import Bools, Column, Floats, Ints, Numbers
 
 Way = Literal["stricter", "looser", "otherwise"]
 _LEVELS = ("none", "note", "caution", "hold", "stop")
@@ -67,12 +70,16 @@ class Switch:
 
 @dataclass(frozen=True)
 class ProjectImpact:
-    """What moves in one project. `together` names joints that move only when several changes meet."""
+    """What moves in one project. `together` names joints that move only when several changes meet.
+
+    `old` and `new` hold one joint for all that are given the very same, which `stands_for` names.
+    """
 
     project: Project
     moves: tuple[Move, ...]
     causes: tuple[Cause, ...]
     together: tuple[str, ...]
+    stands_for: Mapping[str, str] = field(compare=False, repr=False)
     old: Evaluation = field(compare=False, repr=False)
     new: Evaluation = field(compare=False, repr=False)
 
@@ -88,7 +95,7 @@ def impact(before: Knowledge, after: Knowledge, folders: Sequence[Path]) -> tupl
     found = differences_between(before, after)
     switched = [_switch(before, after, group) for group in _groups(before, after, found)]
     graphs = build_graph(before), build_graph(after)
-    return tuple(_project_impact(folder, (before, after), graphs, switched) for folder in folders)
+    return tuple(_project_impact(folder, (before, after), graphs, switched, found) for folder in folders)
 
 
 def _groups(before: Knowledge, after: Knowledge, found: tuple[Difference, ...]) -> list[tuple[Difference, ...]]:
@@ -150,33 +157,77 @@ def _project_impact(
     sets: tuple[Knowledge, Knowledge],
     graphs: tuple[KnowledgeGraph, KnowledgeGraph],
     switches: Sequence[Switch],
+    found: tuple[Difference, ...],
 ) -> ProjectImpact:
     project = read_project(folder, sets[0])
-    other = project if _read_alike(*sets) else read_project(folder, sets[1])
-    base = evaluate(sets[0], project.facts, graphs[0])
-    old, new = narrowed(base), narrowed(evaluate(sets[1], other.facts, graphs[1]))
-    moves = moves_between(old, new)
+    other = project if _read_alike(*sets, found) else read_project(folder, sets[1])
+    # A quantity that is new brings what stands where nothing is given, also where its rule alone is switched on.
+    grown = any(difference.of == "quantity" and difference.how == "added" for difference in found)
+    like = _like(sets, graphs, (project.facts, other.facts))
+    first = np.unique(like)
+    base = evaluate(sets[0], _only(project.facts, first, sets[0]), graphs[0])
+    old, new = narrowed(base), narrowed(evaluate(sets[1], _only(other.facts, first, sets[1]), graphs[1]))
+    names = project.facts.joints
+    moves = _spread(moves_between(old, new), like, names)
     causes = []
     for switch in switches:
-        alike = _read_alike(sets[0], switch.knowledge)
-        facts = project.facts if alike else read_project(folder, switch.knowledge).facts
+        same = not grown and _read_alike(sets[0], switch.knowledge, switch.differences)
         if switch.graph:
-            one = narrowed(evaluate(switch.knowledge, facts, switch.graph, kept=base if alike else None))
-            causes.append(Cause(switch.differences, moves_between(old, one)))
+            facts = project.facts if same else read_project(folder, switch.knowledge).facts
+            few = base.facts if same else _only(facts, first, switch.knowledge)
+            one = narrowed(evaluate(switch.knowledge, few, switch.graph, kept=base if same else None))
+            causes.append(Cause(switch.differences, _spread(moves_between(old, one), like, names)))
         else:
             causes.append(Cause(switch.differences, ()))
     explained = {move.joint for cause in causes for move in cause.moves}
     together = tuple(dict.fromkeys(move.joint for move in moves if move.joint not in explained))
-    return ProjectImpact(project, moves, tuple(causes), together, old, new)
+    stands_for = {name: names[row] for name, row in zip(names, like.tolist(), strict=True)}
+    return ProjectImpact(project, moves, tuple(causes), together, stands_for, old, new)
 
 
-# The records that a project's files are read with.
-_READ_WITH = ("quantities", "grades", "eras", "sampling", "consumables")
+def _like(
+    sets: tuple[Knowledge, Knowledge], graphs: tuple[KnowledgeGraph, KnowledgeGraph], both: tuple[Facts, Facts]
+) -> Ints:
+    """For every joint the row of the first one that is given the very same under both sets; it is decided for all."""
+    count = len(both[0].joints)
+    firsts = []
+    for knowledge, graph, facts in zip(sets, graphs, both, strict=True):
+        found = np.arange(count)
+        # Findings set aside for single joints tell joints apart that are else alike.
+        groups = alike(Evaluation(knowledge, graph, facts, {}, {}), range(count)) if not facts.set_aside else {}
+        for row, group in groups.items():
+            found[list(group)] = row
+        firsts.append(found)
+    _, where, back = np.unique(np.stack(firsts), axis=1, return_index=True, return_inverse=True)
+    like: Ints = where[back.reshape(-1)]
+    return like
 
 
-def _read_alike(one: Knowledge, other: Knowledge) -> bool:
-    """Whether a project's files mean the same facts under both sets."""
-    return all(getattr(one, kept) == getattr(other, kept) for kept in _READ_WITH)
+def _only(facts: Facts, rows: Ints, knowledge: Knowledge) -> Facts:
+    """The joints at some rows; the facts as they are where that is all of them."""
+    return facts if len(rows) == len(facts.joints) else facts.repeated(rows, knowledge.quantities)[0]
+
+
+def _spread(moves: Sequence[Move], like: Ints, names: Sequence[str]) -> tuple[Move, ...]:
+    """The moves of the joints decided, said of every joint that they stand for, in the order of the project."""
+    by_joint: dict[str, list[Move]] = {}
+    for move in moves:
+        by_joint.setdefault(move.joint, []).append(move)
+    return tuple(
+        replace(move, joint=name)
+        for name, row in zip(names, like.tolist(), strict=True)
+        for move in by_joint.get(names[row], ())
+    )
+
+
+# The kinds of record that a project's files are read with.
+_READ_WITH = frozenset({"quantity", "grade", "era", "consumable"})
+
+
+def _read_alike(one: Knowledge, other: Knowledge, differences: Iterable[Difference]) -> bool:
+    """Whether a project's files mean the same facts under both sets, which differ in these records."""
+    same_samples = meaning_of(one.sampling) == meaning_of(other.sampling)
+    return same_samples and not any(difference.of in _READ_WITH for difference in differences)
 
 
 def moves_between(old: Evaluation, new: Evaluation) -> tuple[Move, ...]:

@@ -96,7 +96,7 @@ def _what(found: ProjectImpact, move: Move) -> str:
 
 def _side_by_side(found: ProjectImpact, move: Move) -> list[list[str]]:
     """The reasons of a decision under both sets of rules: its own sentence, then those of the rules that govern it."""
-    row = found.old.facts.joints.index(move.joint)
+    row = found.old.facts.joints.index(found.stands_for[move.joint])
     sides = []
     for evaluation in (found.old, found.new):
         steps = Steps(evaluation, row)
